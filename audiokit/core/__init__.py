@@ -1,0 +1,1 @@
+"""Words, errors and calendar arithmetic that every room shares."""

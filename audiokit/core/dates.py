@@ -1,0 +1,82 @@
+"""Calendar arithmetic on whole arrays. Dates are int32 days since 1970-01-01."""
+
+import datetime
+from functools import cache
+from typing import Any
+
+import numpy as np
+from numpy.typing import ArrayLike, NDArray
+
+Days = NDArray[np.int32]
+
+NO_DATE = np.int32(np.iinfo(np.int32).min)
+"""Stands for "not recorded" in arrays of days."""
+
+_EPOCH = datetime.date(1970, 1, 1)
+
+
+def to_days(date: datetime.date) -> int:
+    """Days since 1970-01-01 of a calendar date."""
+    return (date - _EPOCH).days
+
+
+def to_date(days: int) -> datetime.date:
+    """Calendar date of a count of days since 1970-01-01."""
+    return _EPOCH + datetime.timedelta(days=int(days))
+
+
+def _as_datetime64(days: ArrayLike) -> NDArray[np.datetime64]:
+    return np.asarray(days, dtype=np.int64).astype("datetime64[D]")
+
+
+def year_month_day(days: ArrayLike) -> tuple[NDArray[Any], NDArray[Any], NDArray[Any]]:
+    """Year, month (1–12) and day of month (1–31) of each date."""
+    date = _as_datetime64(days)
+    month = date.astype("datetime64[M]")
+    year = month.astype("datetime64[Y]")
+    return (
+        year.astype(np.int64) + 1970,
+        (month - year).astype(np.int64) + 1,
+        (date - month.astype("datetime64[D]")).astype(np.int64) + 1,
+    )
+
+
+def add_months(days: ArrayLike, months: int) -> Days:
+    """The same day of the month, `months` calendar months later; the month's last day where there is none."""
+    date = _as_datetime64(days)
+    month = date.astype("datetime64[M]")
+    day_of_month = date - month.astype("datetime64[D]")
+    target = month + np.timedelta64(months, "M")
+    last = (target + np.timedelta64(1, "M")).astype("datetime64[D]") - np.timedelta64(1, "D")
+    return np.minimum(target.astype("datetime64[D]") + day_of_month, last).astype(np.int64).astype(np.int32)
+
+
+@cache
+def _calendar() -> tuple[int, NDArray[np.int32]]:
+    """First day, and year × 10000 + month × 100 + day of each day from 1850 to 2250."""
+    first, last = to_days(datetime.date(1850, 1, 1)), to_days(datetime.date(2251, 1, 1))
+    year, month, day = year_month_day(np.arange(first, last))
+    return first, (year * 10000 + month * 100 + day).astype(np.int32)
+
+
+def calendar_number(days: ArrayLike) -> NDArray[np.int32]:
+    """Year × 10000 + month × 100 + day of dates from 1850 to 2250, by one look-up."""
+    first, numbers = _calendar()
+    return numbers[np.asarray(days) - np.int32(first)]
+
+
+def completed_years(from_days: ArrayLike, to: ArrayLike) -> NDArray[np.int32]:
+    """Completed years between two dates from 1850 to 2250. [years]
+
+    No text read says how to count an age (common practice, no source): a birthday on 29 February counts from 1 March
+    in common years.
+    """
+    return (calendar_number(to) - calendar_number(from_days)) // np.int32(10000)
+
+
+def iso_text(days: ArrayLike) -> NDArray[np.object_]:
+    """ISO dates as text; NO_DATE becomes the empty string."""
+    array = np.asarray(days, dtype=np.int32)
+    text = np.datetime_as_string(_as_datetime64(np.where(array == NO_DATE, 0, array)), unit="D").astype(object)
+    text[array == NO_DATE] = ""
+    return text

@@ -1,0 +1,1 @@
+"""A seeded generator of an invented cohort, complete with the faults that real files have."""

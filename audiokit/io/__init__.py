@@ -1,0 +1,1 @@
+"""Files to tables and back: reading, mapping, validation, quarantine, decisions."""

@@ -1,0 +1,41 @@
+"""Parquet to a RawTable: numbers and dates keep their types, texts come by their distinct values."""
+
+import numpy as np
+import pyarrow as pa
+import pyarrow.parquet
+from pyarrow import types
+
+from audiokit.core.errors import CohortError
+from audiokit.io.headings import clean_headings
+from audiokit.io.raw import RawTable
+from audiokit.io.texts import is_readable_type
+
+
+def _check_types(schema: pa.Schema, file: str) -> None:
+    for field in schema:
+        kind = field.type.value_type if types.is_dictionary(field.type) else field.type
+        if not is_readable_type(kind):
+            raise CohortError(
+                f"{file}: the column {field.name!r} holds {kind}, which is no text, number, date or yes/no",
+                "store it as text, or leave it out",
+            )
+
+
+def read_parquet(data: bytes, file: str) -> RawTable:
+    """A parquet file. The first row has number 2, as in a table with one row of headings.
+
+    Raises CohortError where the file is damaged, holds nested columns, or has no rows.
+    """
+    try:
+        schema = pyarrow.parquet.read_schema(pa.BufferReader(data))
+        _check_types(schema, file)
+        texts = [field.name for field in schema if types.is_string(field.type) or types.is_large_string(field.type)]
+        table = pyarrow.parquet.read_table(pa.BufferReader(data), read_dictionary=texts)
+    except (pa.ArrowException, OSError) as error:
+        raise CohortError(
+            f"{file}: the parquet file is damaged ({str(error).splitlines()[0]})", "export it again"
+        ) from None
+    if not len(table):
+        raise CohortError(f"{file}: there are columns but no rows", "export the table again, with its rows")
+    headings, columns = clean_headings(table.column_names, table.columns, file)
+    return RawTable(file, headings, columns, np.arange(2, len(table) + 2), typed=True)

@@ -1,0 +1,65 @@
+"""One file of the folder to a RawTable: csv, xlsx or parquet by its suffix, with errors that say what to do."""
+
+from audiokit.core.errors import CohortError
+from audiokit.io.raw import RawTable
+from audiokit.io.settings import SUFFIXES, SourceFile
+
+_ZIP, _OLE, _PARQUET = b"PK\x03\x04", b"\xd0\xcf\x11\xe0", b"PAR1"
+_SIGNS = {
+    _ZIP: "an Excel workbook (or another zip archive)",
+    _OLE: "an old or password-protected Excel workbook",
+    _PARQUET: "a parquet file",
+}
+
+
+def _read_bytes(source: SourceFile) -> bytes:
+    try:
+        return source.path.read_bytes()
+    except FileNotFoundError:
+        raise CohortError(
+            f"{source.name}: there is no such file in the folder", "check [files] in cohort.toml"
+        ) from None
+    except IsADirectoryError:
+        raise CohortError(f"{source.name}: this is a folder, not a file", "name the table itself") from None
+    except OSError as error:
+        raise CohortError(
+            f"{source.name}: the file cannot be read ({error.strerror})",
+            "close it elsewhere, or ask for the right to it",
+        ) from error
+
+
+def read_table(source: SourceFile) -> RawTable:
+    """The raw table of one file.
+
+    Raises CohortError where the file is missing, of another kind than its name says, damaged, or empty.
+    """
+    suffix = source.path.suffix.lower()
+    if suffix not in SUFFIXES:
+        raise CohortError(
+            f"{source.name}: files that end in {suffix or 'nothing'} are not read",
+            f"save it as one of {', '.join(SUFFIXES)}",
+        )
+    data = _read_bytes(source)
+    if not data:
+        raise CohortError(f"{source.name}: the file is empty", "export the table again")
+    settings = source.settings
+    expected = {".csv": None, ".xlsx": _ZIP, ".parquet": _PARQUET}[suffix]
+    for sign, what in _SIGNS.items():
+        if data.startswith(sign) and sign != expected:
+            raise CohortError(
+                f"{source.name}: the file is {what}, whatever its name says",
+                "save it without password as .xlsx, or export it as .csv" if sign == _OLE else "give it its own suffix",
+            )
+    if suffix == ".csv":
+        from audiokit.io.csv_reader import read_csv
+
+        return read_csv(
+            data, source.name, encoding=settings.encoding, delimiter=settings.delimiter, header_row=settings.header_row
+        )
+    if suffix == ".xlsx":
+        from audiokit.io.xlsx_reader import read_xlsx
+
+        return read_xlsx(data, source.name, sheet=settings.sheet, header_row=settings.header_row)
+    from audiokit.io.parquet_reader import read_parquet
+
+    return read_parquet(data, source.name)

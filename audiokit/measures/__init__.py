@@ -1,0 +1,1 @@
+"""Pure array arithmetic on thresholds."""

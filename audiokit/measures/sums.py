@@ -1,0 +1,50 @@
+"""Sums of thresholds over a set of frequencies, as exact integers with the state of the interval beside them."""
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from audiokit.core.vocabulary import Response
+from audiokit.model.grid import ThresholdGrid
+
+OPEN = np.uint8(1)
+"""Flag: at least one of the thresholds is a no response, so that the sum has no upper end."""
+MISSING = np.uint8(2)
+"""Flag: at least one of the frequencies has no interval, so that no sum exists."""
+
+
+@dataclass(frozen=True)
+class Sums:
+    """Sums over one frequency set, per ear and test.
+
+    total : int16, tenths of a dB HL [ear, test]; the lower end of the interval; meaningless where MISSING
+    flags : uint8 of OPEN and MISSING [ear, test]
+    count : how many frequencies were summed; a mean is total / count, compared by cross-multiplication only
+    """
+
+    total: NDArray[np.int16]
+    flags: NDArray[np.uint8]
+    count: int
+
+
+def threshold_sums(grid: ThresholdGrid, frequencies_hz: Sequence[int]) -> Sums:
+    """Sum of the hearing threshold levels at `frequencies_hz` in each ear. [tenths of a dB HL]
+
+    A frequency that the files do not hold at all counts as missing in every test.
+    """
+    tests = len(grid)
+    total = np.zeros((2, tests), dtype=np.int16)
+    flags = np.zeros((2, tests), dtype=np.uint8)
+    for frequency in frequencies_hz:
+        if frequency not in grid.frequencies_hz:
+            flags |= MISSING
+            continue
+        at = grid.frequencies_hz.index(frequency)
+        for ear in (0, 1):
+            total[ear] += grid.threshold[ear, at]
+            response = grid.response[ear, at]
+            flags[ear] |= (response == Response.NO_RESPONSE).view(np.uint8)
+            flags[ear] |= (response > Response.NO_RESPONSE).view(np.uint8) << np.uint8(1)
+    return Sums(total, flags, len(frequencies_hz))

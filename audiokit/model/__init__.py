@@ -1,0 +1,1 @@
+"""The aligned arrays that all arithmetic runs on."""

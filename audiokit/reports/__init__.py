@@ -1,0 +1,1 @@
+"""Findings as files that people read."""

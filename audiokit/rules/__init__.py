@@ -1,0 +1,1 @@
+"""Jurisdictions as data files, and the strict parser that reads them."""

@@ -1,0 +1,1 @@
+"""Published tables as data, with the functions their standards define."""

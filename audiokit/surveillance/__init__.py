@@ -1,0 +1,1 @@
+"""People through time: baselines, retests, events, worklist."""

@@ -1,0 +1,160 @@
+"""The yearly review: one cohort against its rulebooks, as known on a date."""
+
+from collections.abc import Callable
+from dataclasses import dataclass
+from functools import cached_property
+from typing import Any
+
+import numpy as np
+import pandas as pd
+from numpy.typing import NDArray
+
+from audiokit.core.dates import to_days
+from audiokit.measures.shifts import interval_ends, level_met
+from audiokit.measures.sums import Sums, threshold_sums
+from audiokit.model.cohort import Cohort
+from audiokit.model.grid import ThresholdGrid
+from audiokit.rules.catalogue import load_rulebook
+from audiokit.rules.spec import Criterion, Rulebook, tenths
+from audiokit.standards.age_tables import age_table
+from audiokit.surveillance.ages import AgeCorrection, age_correction
+from audiokit.surveillance.baselines import BaselineHistory, baseline_history, unanswered
+from audiokit.surveillance.block import History, Judged, history_of
+from audiokit.surveillance.decided import DecisionEffect, baseline_decisions, invalidated_tests
+from audiokit.surveillance.events import OUTCOMES, Events, find_events
+from audiokit.surveillance.mechanics import Findings, Plan, run_mechanics
+from audiokit.surveillance.revision import OtherFrequencies
+
+Progress = Callable[[str, int | None, int | None], None]
+
+
+@dataclass(frozen=True)
+class BookReview:
+    """What one rulebook says: by criterion id its findings, sums, age corrections (where applied) and events."""
+
+    rulebook: Rulebook
+    findings: dict[str, Findings]
+    sums: dict[str, Sums]
+    ages: dict[str, AgeCorrection]
+    events: dict[str, Events]
+    baselines: BaselineHistory
+    decisions: DecisionEffect
+
+
+@dataclass(frozen=True)
+class Review:
+    """A review in arrays; tables are made from it by `audiokit.reports`.
+
+    grid    : the tests that take part: valid, not invalidated, not after as_of; every index below counts in it
+    history : their order      left_out : for each test of cohort.grid, why it takes no part ("" where it does)
+    invalidated_by : number of the decision that invalidates a test of cohort.grid, else 0
+    """
+
+    cohort: Cohort
+    grid: ThresholdGrid
+    history: History
+    left_out: NDArray[np.object_]
+    invalidated_by: NDArray[np.int64]
+    books: tuple[BookReview, ...]
+
+    @property
+    def as_of_day(self) -> int:
+        """Date of the review in days since 1970-01-01."""
+        return to_days(self.cohort.settings.as_of)
+
+    def tests_after_as_of(self) -> int:
+        """How many accepted tests are dated after the review's date."""
+        return int((self.cohort.grid.day > self.as_of_day).sum())
+
+    @cached_property
+    def worklist(self) -> pd.DataFrame:
+        """Who needs what by when, with the columns of worklist.csv."""
+        from audiokit.surveillance.worklist import worklist
+
+        return worklist(self)
+
+    def summary(self) -> dict[str, Any]:
+        """Counts for a first look: people, tests, events by criterion and outcome, worklist by action."""
+        events = {
+            criterion: {name: int((found.outcome == code).sum()) for code, name in enumerate(OUTCOMES)}
+            for book in self.books
+            for criterion, found in book.events.items()
+        }
+        actions = {
+            str(action): (len(group), int((group["overdue"] == "yes").sum()))
+            for action, group in self.worklist.groupby("action", sort=True)
+        }
+        return {
+            "people": len(self.cohort.people),
+            "tests": len(self.grid),
+            "tests_left_out": int((self.left_out != "").sum()),
+            "events": events,
+            "worklist": actions,
+        }
+
+
+def review(cohort: Cohort, progress: Progress | None = None) -> Review:
+    """Judge a cohort by its rulebooks.
+
+    Raises RuleFileError: a rulebook that does not exist or is not in force on the review's date.
+    """
+    settings = cohort.settings
+    as_of_day = to_days(settings.as_of)
+    rulebooks = [load_rulebook(name, settings.as_of) for name in settings.rulebooks]
+    invalidated_by = invalidated_tests(cohort.decisions, cohort.grid, cohort.people)
+    left_out = np.full(len(cohort.grid), "", dtype=object)
+    left_out[invalidated_by > 0] = "invalidated_by_decision"
+    left_out[~cohort.grid.valid] = "marked_invalid"
+    left_out[cohort.grid.day > as_of_day] = "after_as_of"
+    grid = cohort.grid.take(left_out == "")
+    history = history_of(grid)
+    books = tuple(_review_book(book, cohort, grid, history, as_of_day, progress) for book in rulebooks)
+    return Review(cohort, grid, history, left_out, invalidated_by, books)
+
+
+def _review_book(
+    rulebook: Rulebook,
+    cohort: Cohort,
+    grid: ThresholdGrid,
+    history: History,
+    as_of_day: int,
+    progress: Progress | None,
+) -> BookReview:
+    settings = cohort.settings
+    sums: dict[str, Sums] = {}
+    ages: dict[str, AgeCorrection] = {}
+    judged: dict[str, Judged] = {}
+    for criterion in rulebook.criteria:
+        frequencies = criterion.frequencies_hz.value
+        sums[criterion.id] = threshold_sums(grid, frequencies)
+        if settings.age_correction and criterion.age_table is not None:
+            table = age_table(criterion.age_table.value)
+            ages[criterion.id] = age_correction(table, frequencies, cohort.people, grid)
+        judged[criterion.id] = _judged(criterion, sums[criterion.id], ages.get(criterion.id))
+    automatic = settings.baseline_revision == "automatic"
+    decisions = baseline_decisions(cohort.decisions, grid, cohort.people, history, as_of_day, automatic)
+    plan = Plan(as_of_day, automatic, settings.recording_baseline == "in_force")
+    other = _other_frequencies(grid, rulebook.criterion(rulebook.revision.criterion))
+    findings = run_mechanics(rulebook, history, judged, other, decisions.baselines, plan, progress)
+    events = {
+        name: find_events(found.trail, history, as_of_day, found.criterion.retest_window_days.value)
+        for name, found in findings.items()
+    }
+    revised = findings[rulebook.revision.criterion]
+    proposals = unanswered(revised.proposals, decisions.answers)
+    baselines = baseline_history(history, revised.trail.changes, proposals)
+    return BookReview(rulebook, findings, sums, ages, events, baselines, decisions)
+
+
+def _judged(criterion: Criterion, sums: Sums, ages: AgeCorrection | None) -> Judged:
+    correction = None if ages is None else ages.value * np.int16(10)
+    ends = interval_ends(sums, correction)
+    level = None
+    if criterion.level_at_least_db is not None:
+        level = level_met(interval_ends(sums), tenths(criterion.level_at_least_db, sums.count))
+    return Judged(ends.low, ends.high, sums.total, level, tenths(criterion.shift_at_least_db, sums.count))
+
+
+def _other_frequencies(grid: ThresholdGrid, criterion: Criterion) -> OtherFrequencies:
+    at = [n for n, hz in enumerate(grid.frequencies_hz) if hz not in criterion.frequencies_hz.value]
+    return OtherFrequencies(grid.threshold[:, at], grid.response[:, at])

@@ -1,0 +1,120 @@
+"""The two published persistence rules for revising a baseline, on whole sequences of effective tests."""
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from audiokit.core.dates import add_months
+from audiokit.core.vocabulary import Response
+
+Indices = NDArray[np.int32]
+Mask = NDArray[np.bool_]
+
+IMPROVEMENT, PERSISTENT_SHIFT, DECISION, INITIAL, EVENT = range(5)
+REASONS = ("improvement", "persistent_shift", "decision", "initial", "event")
+
+
+@dataclass(frozen=True)
+class RevisionLimits:
+    """improvement : better by at least this much, sums in tenths of a dB; months : calendar months of persistence."""
+
+    improvement: int
+    months: int
+
+
+@dataclass(frozen=True)
+class Effective:
+    """Some effective tests of one ear, in order: periodic tests, each replaced by the retest that decided it.
+
+    slot : the periodic test, which marks the place in the sequence      test : the test that stands there
+    follows : the entry before is the effective test directly before this one in the same sequence
+    """
+
+    slot: Indices
+    test: Indices
+    follows: Mask
+
+
+@dataclass(frozen=True)
+class Hits:
+    """Effective tests that reveal a revision; one ear.
+
+    slot, test : as in `Effective`      earlier : the other test of the pair
+    reason : IMPROVEMENT or PERSISTENT_SHIFT
+    """
+
+    slot: Indices
+    test: Indices
+    earlier: Indices
+    reason: NDArray[np.int8]
+
+    def where(self, keep: Mask) -> "Hits":
+        """The entries that a mask selects."""
+        return Hits(self.slot[keep], self.test[keep], self.earlier[keep], self.reason[keep])
+
+
+def find_hits(better: Effective, held: Effective, day: NDArray[np.int32], limits: RevisionLimits) -> Hits:
+    """Every effective test at which a rule holds; one ear.
+
+    better : those with an exact shift, never age-corrected, of at most -limits.improvement
+    held   : those with an exact shift that met the criterion
+
+    A test that is in neither interrupts: it is no partner of the first rule and ends a run of the second.
+    """
+    improved = np.flatnonzero(better.follows)
+    starts_run = ~held.follows
+    run_first = held.test[starts_run]
+    run = np.cumsum(starts_run) - 1
+    persists = ~starts_run & (day[held.test] >= add_months(day[run_first], limits.months)[run])
+    persists &= ~np.isin(held.slot, better.slot[improved])
+    slot = np.concatenate((better.slot[improved], held.slot[persists]))
+    order = np.argsort(slot, kind="stable")
+    reason = np.repeat(np.array([IMPROVEMENT, PERSISTENT_SHIFT], dtype=np.int8), (len(improved), persists.sum()))
+    return Hits(
+        slot=slot[order],
+        test=np.concatenate((better.test[improved], held.test[persists]))[order],
+        earlier=np.concatenate((better.test[improved - 1], run_first[run][persists]))[order],
+        reason=reason[order],
+    )
+
+
+@dataclass(frozen=True)
+class OtherFrequencies:
+    """Thresholds at the frequencies outside the criterion's own, to break ties. [ear, frequency, test]"""
+
+    threshold: NDArray[np.int16]
+    response: NDArray[np.int8]
+
+    def part(self, tests: slice) -> "OtherFrequencies":
+        """The same for a stretch of tests."""
+        return OtherFrequencies(self.threshold[:, :, tests], self.response[:, :, tests])
+
+    def later_is_better(self, ear: int, earlier: Indices, later: Indices) -> Mask:
+        """True where the later test is better elsewhere: at none of the frequencies worse, at one surely better.
+
+        Only frequencies with an interval in both tests count. A pair that is not surely equal or better counts as worse;
+        two no responses at one level are equal.
+        """
+        level_e, level_l = self.threshold[ear][:, earlier], self.threshold[ear][:, later]
+        response_e, response_l = self.response[ear][:, earlier], self.response[ear][:, later]
+        usable = (response_e <= Response.NO_RESPONSE) & (response_l <= Response.NO_RESPONSE)
+        both_open = (response_e == Response.NO_RESPONSE) & (response_l == Response.NO_RESPONSE)
+        closed = response_l == Response.MEASURED
+        not_worse = (closed & (level_l <= level_e)) | (both_open & (level_l == level_e))
+        better = closed & (level_l < level_e)
+        return (not_worse | ~usable).all(axis=0) & (better & usable).any(axis=0)
+
+
+def choose(hits: Hits, total: NDArray[np.int16], ear: int, other: OtherFrequencies) -> Indices:
+    """The test that should become the baseline at each hit: the lower mean hearing level, tie: the earlier.
+
+    For a persistent shift the later wins a tie when it is better at the other frequencies.
+    total : sums of thresholds of all tests in this ear, never age-corrected
+    """
+    difference = total[hits.test] - total[hits.earlier]
+    take_later = difference < 0
+    tied = np.flatnonzero((difference == 0) & (hits.reason == PERSISTENT_SHIFT))
+    if len(tied):
+        take_later[tied] = other.later_is_better(ear, hits.earlier[tied], hits.test[tied])
+    return np.where(take_later, hits.test, hits.earlier)

@@ -1,0 +1,230 @@
+"""Who needs what by when: one line per person, test, ear and action, soonest first."""
+
+from dataclasses import dataclass, field
+
+import numpy as np
+import pandas as pd
+from numpy.typing import ArrayLike, NDArray
+
+from audiokit.core.dates import NO_DATE, add_months, iso_text
+from audiokit.core.vocabulary import EARS, Met
+from audiokit.rules.spec import Rulebook
+from audiokit.surveillance.baselines import IN_FORCE, PROPOSED
+from audiokit.surveillance.decided import index_in
+from audiokit.surveillance.events import RETEST_OPEN
+from audiokit.surveillance.review import BookReview, Review
+from audiokit.surveillance.revision import REASONS
+
+COLUMNS = ("due_on", "overdue", "action", "person_id", "ear", "test_id", "criterion", "why")
+
+_NO_EAR = np.int8(2)
+_EAR_TEXT = np.array([*EARS, ""], dtype=object)
+
+
+@dataclass
+class _Lines:
+    """Columns under construction; texts are made once for all lines of a kind."""
+
+    parts: list[pd.DataFrame] = field(default_factory=list)
+
+    def add(
+        self,
+        action: str,
+        person: NDArray[np.int32],
+        ear: ArrayLike,
+        test: NDArray[np.int32] | None,
+        due: ArrayLike,
+        criterion: str,
+        why: ArrayLike,
+    ) -> None:
+        lines = len(person)
+        self.parts.append(
+            pd.DataFrame(
+                {
+                    "action": np.full(lines, action, dtype=object),
+                    "person": person,
+                    "ear": np.broadcast_to(np.asarray(ear, dtype=np.int8), lines),
+                    "test": np.full(lines, -1) if test is None else test,
+                    "due": np.broadcast_to(np.asarray(due, dtype=np.int32), lines),
+                    "criterion": np.full(lines, criterion, dtype=object),
+                    "why": np.broadcast_to(np.asarray(why, dtype=object), lines),
+                }
+            )
+        )
+
+
+def worklist(review: Review) -> pd.DataFrame:
+    """The worklist with the columns of worklist.csv, as text; dates ISO, blank where nothing is due.
+
+    A person who has left is on it only for notices and records that became due before.
+    """
+    lines = _Lines()
+    for book in review.books:
+        _event_lines(review, book, lines)
+        _review_lines(review, book, lines)
+    _schedule_lines(review, review.books[0].rulebook, lines)
+    table = pd.concat(lines.parts, ignore_index=True)
+    table = table[_still_concerned(review, table)]
+    table = _one_line_each(table)
+    people = review.cohort.people.person_id.to_pandas().to_numpy(dtype=object)
+    tests = np.append(review.grid.test_id.to_pandas().to_numpy(dtype=object), "")
+    due = table["due"].to_numpy()
+    overdue = np.where(due < review.as_of_day, "yes", "no").astype(object)
+    no_date = due == NO_DATE
+    overdue[no_date] = np.where(table["action"].to_numpy()[no_date] == "baseline_test", "unknown", "no")
+    out = pd.DataFrame(
+        {
+            "due_on": iso_text(due),
+            "overdue": overdue,
+            "action": table["action"].to_numpy(),
+            "person_id": people[table["person"]],
+            "ear": _EAR_TEXT[table["ear"].to_numpy()],
+            "test_id": tests[table["test"]],
+            "criterion": table["criterion"].to_numpy(),
+            "why": table["why"].to_numpy(),
+        }
+    )
+    rank = np.where(no_date, np.iinfo(np.int32).max, due)
+    order = out.assign(rank=rank).sort_values(["rank", "action", "person_id", "ear", "test_id"], kind="stable").index
+    return out.loc[order, list(COLUMNS)].reset_index(drop=True)
+
+
+def _still_concerned(review: Review, table: pd.DataFrame) -> NDArray[np.bool_]:
+    left = review.cohort.people.left_day[table["person"].to_numpy()]
+    gone = (left != NO_DATE) & (left <= review.as_of_day)
+    due_before = table["action"].isin(("notify", "record")).to_numpy() & (table["due"].to_numpy() < left)
+    return ~gone | due_before
+
+
+def _one_line_each(table: pd.DataFrame) -> pd.DataFrame:
+    """Two criteria that ask for the same action make one line that names both."""
+    key = ["action", "person", "test", "ear"]
+    twice = table.duplicated(key, keep=False)
+    if not twice.any():
+        return table
+    several = table[twice].groupby(key, sort=False, as_index=False)
+    merged = several.agg({"due": "min", "criterion": ";".join, "why": " | ".join})
+    return pd.concat((table[~twice], merged), ignore_index=True)
+
+
+def _event_lines(review: Review, book: BookReview, lines: _Lines) -> None:
+    person_of, day = review.history.person, review.history.day
+    for name, events in book.events.items():
+        criterion = book.findings[name].criterion
+        window = criterion.retest_window_days
+        waiting = events.outcome == RETEST_OPEN
+        deadline = day[events.test] + window.value
+        why = f"{criterion.name}; retest within {window.value} days of the test ({window.at})"
+        lines.add(
+            "retest",
+            person_of[events.test][waiting],
+            events.ear[waiting],
+            events.test[waiting],
+            deadline[waiting],
+            name,
+            why,
+        )
+        due, asks = deadlines(review, book, name)
+        for action, value in (("notify", criterion.notify_days), ("record", criterion.record_days_after_retest)):
+            if value is None:
+                continue
+            open_ = asks if action == "notify" else asks & ~_found_unrelated(review, name, events.test, events.ear)
+            why = {
+                "notify": f"{criterion.name}: written notice within {value.value} days of the determination ({value.at})",
+                "record": f"{criterion.name}: entry in the log if work-related ({value.at})",
+            }[action]
+            lines.add(
+                action, person_of[events.test][open_], events.ear[open_], events.test[open_], due[open_], name, why
+            )
+
+
+def deadlines(review: Review, book: BookReview, criterion_id: str) -> tuple[NDArray[np.int32], NDArray[np.bool_]]:
+    """Day of notice or of recording of each event of a criterion, and whether the event asks for it."""
+    events, criterion = book.events[criterion_id], book.findings[criterion_id].criterion
+    day = review.history.day
+    if criterion.notify_days is not None:
+        asks = events.stands() | (events.outcome == RETEST_OPEN)
+        return day[events.deciding] + np.int32(criterion.notify_days.value), asks
+    if criterion.record_days_after_retest is None or criterion.record_days_without_retest is None:
+        return np.zeros(len(events.test), dtype=np.int32), np.zeros(len(events.test), dtype=bool)
+    after_retest = day[events.deciding] + np.int32(criterion.record_days_after_retest.value)
+    without = day[events.test] + np.int32(criterion.record_days_without_retest.value)
+    return np.where(events.decided, after_retest, without), events.stands()
+
+
+def _found_unrelated(
+    review: Review, criterion_id: str, test: NDArray[np.int32], ear: NDArray[np.int8]
+) -> NDArray[np.bool_]:
+    """Events that a reviewer found not work-related."""
+    decisions = review.cohort.decisions
+    rows = decisions[decisions["kind"] == "not_work_related"] if len(decisions) else decisions
+    if not len(rows):
+        return np.zeros(len(test), dtype=bool)
+    rows = rows[rows["criterion"] == criterion_id]
+    named = index_in(review.grid.test_id, rows["test_id"])
+    sides = rows["ear"].map(EARS.index).to_numpy(dtype=np.int64)
+    return np.isin(test.astype(np.int64) * 2 + ear, (named * 2 + sides)[named >= 0])
+
+
+def _review_lines(review: Review, book: BookReview, lines: _Lines) -> None:
+    name = book.rulebook.revision.criterion
+    clause = book.findings[name].criterion.baseline.at
+    kept = book.baselines
+    waiting = np.flatnonzero(kept.status == PROPOSED)
+    order = waiting[np.lexsort((kept.test[waiting], kept.from_day[waiting], kept.ear[waiting], kept.person[waiting]))]
+    key = kept.person[order].astype(np.int64) * 2 + kept.ear[order]
+    latest = order[np.append(key[1:] != key[:-1], True)] if len(order) else order
+    for code in np.unique(kept.reason[latest]):
+        mine = latest[kept.reason[latest] == code]
+        why = f"a licensed reviewer decides whether this test becomes the baseline: {REASONS[code]} ({clause})"
+        lines.add("review_baseline", kept.person[mine], kept.ear[mine], kept.test[mine], NO_DATE, name, why)
+    flags = book.sums[name].flags
+    in_force = np.flatnonzero(kept.status == IN_FORCE)
+    lacking = in_force[flags[kept.ear[in_force], kept.test[in_force]] >= 2]
+    why = "the baseline in force lacks a threshold at one of the criterion's frequencies: no shift can be computed"
+    lines.add("review_baseline", kept.person[lacking], kept.ear[lacking], kept.test[lacking], NO_DATE, name, why)
+    _undecided_levels(review, book, lines)
+
+
+def _undecided_levels(review: Review, book: BookReview, lines: _Lines) -> None:
+    """Tests where another criterion is met but one that depends on it cannot be told."""
+    for name, found in book.findings.items():
+        for opener in found.criterion.retest_started_by.value:
+            if opener == name:
+                continue
+            unclear = (found.trail.met == Met.UNKNOWN) & (book.findings[opener].trail.met == Met.YES)
+            ear, test = np.nonzero(unclear)
+            why = f"{opener} is met, but whether {name} is met cannot be told from this test"
+            lines.add("review_test", review.history.person[test], ear, test.astype(np.int32), NO_DATE, name, why)
+
+
+def latest_effective_tests(review: Review) -> tuple[NDArray[np.int64], NDArray[np.int32]]:
+    """People with a test that takes part, and each one's latest periodic result (its deciding retest where there is one,
+    the initial baseline where nothing came later)."""
+    book = review.books[0]
+    trail = book.findings[book.rulebook.revision.criterion].trail
+    people = np.flatnonzero(review.history.initial >= 0)
+    slot = trail.owner[review.history.first[1:][people] - 1]
+    decider = trail.decider[slot]
+    return people, np.where(decider >= 0, decider, slot)
+
+
+def _schedule_lines(review: Review, rulebook: Rulebook, lines: _Lines) -> None:
+    schedule = rulebook.schedule
+    people, test = latest_effective_tests(review)
+    months = schedule.periodic_test_months
+    due = add_months(review.history.day[test], months.value)
+    why = f"periodic test {months.value} months after the latest one ({months.at})"
+    lines.add("annual_test", people.astype(np.int32), _NO_EAR, test, due, "", why)
+    without = np.flatnonzero(review.history.initial < 0)
+    since = review.cohort.people.noise_since_day[without]
+    known = since != NO_DATE
+    months = schedule.baseline_test_months
+    due = np.full(len(without), NO_DATE, dtype=np.int32)
+    due[known] = add_months(since[known], months.value)
+    why = np.where(
+        known,
+        f"no valid test yet; baseline within {months.value} months of first exposure ({months.at})",
+        f"no valid test yet; the date of first exposure is not recorded, so no due date can be given ({months.at})",
+    )
+    lines.add("baseline_test", without.astype(np.int32), _NO_EAR, None, due, "", why)

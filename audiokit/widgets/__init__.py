@@ -1,0 +1,1 @@
+"""Panels: views over the package, no arithmetic of their own."""
