@@ -87,18 +87,22 @@ def _run(arguments: argparse.Namespace) -> int:
 def summary_text(cohort: "Cohort", summary: dict[str, Any], out: Path) -> str:
     """What was read and found, in a few lines.
 
-    summary : people, tests: counts; events: criterion -> outcome -> count; worklist: action -> (count, overdue)
+    summary : people, tests, tests_left_out: counts; events: criterion -> outcome -> count;
+              worklist: action -> (count, overdue)
     """
     settings = cohort.settings
     revision = "by decisions only" if settings.baseline_revision == "reviewed" else "by the published rules"
+    left_out = summary["tests_left_out"]
     quarantined = sum(file.quarantined for file in cohort.intake)
     lines = [
-        f"{settings.name} as of {settings.as_of}: rulebook {', '.join(settings.rulebooks)}; "
-        f"age correction {'on' if settings.age_correction else 'off'}; baselines revised {revision}",
+        f"{settings.name}, as of {settings.as_of}",
+        f"rulebook {', '.join(settings.rulebooks)}; age correction {'on' if settings.age_correction else 'off'}; "
+        f"baselines revised {revision}",
         "",
         *_table([("file", "rows read", "accepted", "quarantined"), *map(_intake_row, cohort.intake)]),
         "",
-        f"{plural(summary['people'], 'person', 'people')}, {plural(summary['tests'], 'test')}",
+        f"{plural(summary['people'], 'person', 'people')}, {plural(summary['tests'], 'test')}"
+        + (f", {left_out} more left out: quality.csv says why" if left_out else ""),
         "",
         "Events",
         *_event_lines(summary["events"]),

@@ -1,4 +1,4 @@
-"""Calendar arithmetic on whole arrays. Dates are int32 days since 1970-01-01."""
+"""Calendar arithmetic on whole arrays. Dates are int32 days since 1970-01-01, from 1850 to 2250."""
 
 import datetime
 from functools import cache
@@ -13,6 +13,10 @@ NO_DATE = np.int32(np.iinfo(np.int32).min)
 """Stands for "not recorded" in arrays of days."""
 
 _EPOCH = datetime.date(1970, 1, 1)
+
+# Calendar arithmetic goes through look-up tables of all days that files may hold: much faster than dates in arrays.
+_FIRST_DAY = (datetime.date(1850, 1, 1) - _EPOCH).days
+_LAST_DAY = (datetime.date(2251, 1, 1) - _EPOCH).days
 
 
 def to_days(date: datetime.date) -> int:
@@ -43,30 +47,35 @@ def year_month_day(days: ArrayLike) -> tuple[NDArray[Any], NDArray[Any], NDArray
 
 def add_months(days: ArrayLike, months: int) -> Days:
     """The same day of the month, `months` calendar months later; the month's last day where there is none."""
-    date = _as_datetime64(days)
-    month = date.astype("datetime64[M]")
-    day_of_month = date - month.astype("datetime64[D]")
-    target = month + np.timedelta64(months, "M")
-    last = (target + np.timedelta64(1, "M")).astype("datetime64[D]") - np.timedelta64(1, "D")
-    return np.minimum(target.astype("datetime64[D]") + day_of_month, last).astype(np.int64).astype(np.int32)
+    later: Days = _later_days(months)[np.asarray(days) - np.int32(_FIRST_DAY)]
+    return later
 
 
 @cache
-def _calendar() -> tuple[int, NDArray[np.int32]]:
-    """First day, and year × 10000 + month × 100 + day of each day from 1850 to 2250."""
-    first, last = to_days(datetime.date(1850, 1, 1)), to_days(datetime.date(2251, 1, 1))
-    year, month, day = year_month_day(np.arange(first, last))
-    return first, (year * 10000 + month * 100 + day).astype(np.int32)
+def _later_days(months: int) -> Days:
+    """`add_months` of every day of the look-up range."""
+    date = np.arange(_FIRST_DAY, _LAST_DAY).astype("datetime64[D]")
+    month = date.astype("datetime64[M]")
+    target = month + np.timedelta64(months, "M")
+    last = (target + np.timedelta64(1, "M")).astype("datetime64[D]") - np.timedelta64(1, "D")
+    later = np.minimum(target.astype("datetime64[D]") + (date - month.astype("datetime64[D]")), last)
+    return later.astype(np.int64).astype(np.int32)
+
+
+@cache
+def _calendar() -> NDArray[np.int32]:
+    year, month, day = year_month_day(np.arange(_FIRST_DAY, _LAST_DAY))
+    return (year * 10000 + month * 100 + day).astype(np.int32)
 
 
 def calendar_number(days: ArrayLike) -> NDArray[np.int32]:
-    """Year × 10000 + month × 100 + day of dates from 1850 to 2250, by one look-up."""
-    first, numbers = _calendar()
-    return numbers[np.asarray(days) - np.int32(first)]
+    """Year × 10000 + month × 100 + day of dates."""
+    number: NDArray[np.int32] = _calendar()[np.asarray(days) - np.int32(_FIRST_DAY)]
+    return number
 
 
 def completed_years(from_days: ArrayLike, to: ArrayLike) -> NDArray[np.int32]:
-    """Completed years between two dates from 1850 to 2250. [years]
+    """Completed years between two dates. [years]
 
     No text read says how to count an age (common practice, no source): a birthday on 29 February counts from 1 March
     in common years.

@@ -1,5 +1,7 @@
 """Puts the example cohort together: draw, measure, fault, lay out, write, decide."""
 
+import os
+import shutil
 from dataclasses import dataclass
 from pathlib import Path
 
@@ -47,26 +49,41 @@ def make_example(folder: Path | str, *, seed: int = DEFAULT_SEED, people: int = 
         raise OutOfScopeError(f"{people} people cannot be made", f"ask for {FEWEST_PEOPLE} to {MOST_PEOPLE}")
     if seed < 0:
         raise OutOfScopeError(f"seed {seed} is below 0", "use a whole number from 0")
-    place = Path(folder)
+    place = Path(folder).resolve()
+    _refuse_what_is_there(place)
     files, revisions, tests, rows = _build(seed, people)
+    fresh = place.with_name(f".{place.name}.{os.getpid()}.part")
     try:
-        _make_empty_folder(place)
+        fresh.mkdir(parents=True)
         for name, content in files.items():
-            (place / name).write_bytes(content)
+            (fresh / name).write_bytes(content)
+        record_decisions(fresh, revisions, tests)
+        _move(fresh, place)
     except OSError as error:
-        raise OutputError(
-            f"{place} cannot be written: {error.strerror}", "check the rights, or choose another folder"
-        ) from error
-    record_decisions(place, revisions, tests)
-    return Example(place, people, rows)
+        mend = "check the rights and the room on the disk, or choose another folder"
+        raise OutputError(f"{place} cannot be written: {error.strerror}", mend) from error
+    finally:
+        shutil.rmtree(fresh, ignore_errors=True)
+    return Example(Path(folder), people, rows)
 
 
-def _make_empty_folder(place: Path) -> None:
-    if place.exists() and not place.is_dir():
-        raise OutputError(f"{place} is a file", "name a new or empty folder")
-    if place.is_dir() and any(place.iterdir()):
-        raise OutputError(f"{place} is not empty; nothing was written", "name a new or empty folder")
-    place.mkdir(parents=True, exist_ok=True)
+def _refuse_what_is_there(place: Path) -> None:
+    try:
+        if place.exists() and not place.is_dir():
+            raise OutputError(f"{place} is a file", "name a new or empty folder")
+        if place.is_dir() and any(place.iterdir()):
+            raise OutputError(f"{place} is not empty; nothing was written", "name a new or empty folder")
+    except OSError as error:
+        raise OutputError(f"{place} cannot be read: {error.strerror}", "choose another folder") from error
+
+
+def _move(fresh: Path, place: Path) -> None:
+    """Give the finished folder its name; an empty folder that is there already is filled file by file."""
+    if not place.exists():
+        fresh.rename(place)
+        return
+    for file in sorted(fresh.iterdir()):
+        file.rename(place / file.name)
 
 
 def _build(seed: int, people: int) -> tuple[dict[str, bytes], Revisions, pd.DataFrame, dict[str, int]]:

@@ -121,8 +121,8 @@ def _after_effect(
     """Temporary threshold shift of people tested soon after noise, from 2000 Hz up; strong in a few (invented)."""
     count = len(person)
     soon = np.where(np.isnan(hours), False, hours < _QUIET_HOURS)
-    mild = np.maximum(rng.normal(1.0, 2.0, count), 0.0)
-    strong = np.where(rng.random(count) < 0.06, 8.0 + 8.0 * rng.random(count), 0.0)
+    mild = np.maximum(rng.normal(0.5, 1.5, count), 0.0)
+    strong = np.where(rng.random(count) < 0.04, 8.0 + 8.0 * rng.random(count), 0.0)
     weight = np.array([0.0, 0.2, 0.8, 1.0, 1.0, 0.8, 0.4])
     return np.where(soon, mild + strong, 0.0)[:, None, None] * weight
 
@@ -138,8 +138,8 @@ def _respond(
     response = np.where(threshold > limits, Response.NO_RESPONSE, Response.MEASURED)
     threshold = np.minimum(threshold, limits).astype(np.int16)
     chance = rng.random(threshold.shape)
-    response = np.where(chance < 0.002, Response.DID_NOT_TEST, response)
-    response = np.where((chance >= 0.002) & (chance < 0.004), Response.NOT_RECORDED, response)
+    response = np.where(chance < 0.001, Response.DID_NOT_TEST, response)
+    response = np.where((chance >= 0.001) & (chance < 0.002), Response.NOT_RECORDED, response)
     whole_ear = rng.random(threshold.shape[:2]) < 0.003
     response = np.where(whole_ear[:, :, None], Response.COULD_NOT_TEST, response)
     return threshold, response.astype(np.int8)

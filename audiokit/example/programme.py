@@ -12,8 +12,8 @@ from audiokit.example.scenario import CAMPAIGN_YEARS, DELIVERED, SHIFT_FREQUENCI
 from audiokit.example.workforce import Workforce
 
 _LAST_DAY = to_days(DELIVERED)
-_RETEST_SHARE = 0.75
-_LATE_RETEST_SHARE = 0.2
+_RETEST_SHARE = 0.88
+_LATE_RETEST_SHARE = 0.12
 _ATTENDANCE = 0.94
 _REVISION_SHARE = 0.85
 _RETEST_WINDOW_DAYS = 30

@@ -17,9 +17,13 @@ from audiokit.model.grid import People, ThresholdGrid
 
 def _order(person: NDArray[np.int32], stamp: NDArray[np.int64], place: NDArray[np.int64]) -> NDArray[np.int64]:
     """Tests by person, then time, then input."""
-    same, later = np.diff(person) == 0, np.diff(stamp)
-    ascending = (np.diff(person) > 0) | (same & ((later > 0) | ((later == 0) & (np.diff(place) > 0))))
-    return np.arange(len(person)) if ascending.all() else np.lexsort((place, stamp, person))
+    if not len(person):
+        return np.zeros(0, np.int64)
+    times, moment = np.unique(stamp, return_inverse=True)
+    if (int(person.max()) + 1) * len(times) * (int(place.max()) + 1) > np.iinfo(np.int64).max:
+        return np.lexsort((place, moment, person))
+    # one number per test: numpy sorts these several times quicker than three keys
+    return np.argsort((person.astype(np.int64) * len(times) + moment) * (int(place.max()) + 1) + place)
 
 
 def _occurrence(person: NDArray[np.int32], day: NDArray[np.int32]) -> NDArray[np.int64]:

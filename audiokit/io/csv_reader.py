@@ -1,5 +1,7 @@
 """Delimited text to a RawTable: every cell as text, nothing inferred, rows of another length set apart."""
 
+from collections.abc import Collection, Sequence
+
 import numpy as np
 import pyarrow as pa
 import pyarrow.csv
@@ -30,10 +32,11 @@ def _check_delimiter(names: list[str], file: str, delimiter: str) -> None:
 
 
 def _arrow_columns(
-    text: memoryview, records: Records, width: int, delimiter: str
+    text: memoryview, records: Records, plain: Sequence[bool], delimiter: str
 ) -> tuple[pa.ChunkedArray, ...] | None:
     """The columns as pyarrow reads them, by distinct texts; None where it sees other records than `records` says."""
-    keys = [str(i) for i in range(width)]
+    keys = [str(i) for i in range(len(plain))]
+    distinct = pa.dictionary(pa.int32(), pa.string())
     longest = int((records.stop - records.start).max())
     table = pyarrow.csv.read_csv(
         pa.BufferReader(pa.py_buffer(text)),
@@ -44,12 +47,12 @@ def _arrow_columns(
             invalid_row_handler=lambda row: "skip",
         ),
         convert_options=pyarrow.csv.ConvertOptions(
-            column_types=dict.fromkeys(keys, pa.dictionary(pa.int32(), pa.string())),
+            column_types={key: pa.string() if whole else distinct for key, whole in zip(keys, plain, strict=True)},
             strings_can_be_null=False,
             null_values=[],
         ),
     )
-    return tuple(table.columns) if len(table) == np.count_nonzero(records.cells == width) else None
+    return tuple(table.columns) if len(table) == np.count_nonzero(records.cells == len(plain)) else None
 
 
 def _table(
@@ -77,7 +80,10 @@ def _read_slowly(text: bytes, file: str, delimiter: str, header_row: int | None)
     lines = np.asarray(found.lines[head + 1 :], np.int64)
     counts = np.fromiter((len(cells) for cells in body), np.int64, len(body))
     kept = [cells for cells in body if len(cells) == len(names)]
-    columns = tuple(pa.chunked_array([pa.array([cells[i] for cells in kept], pa.string())]) for i in range(len(names)))
+    columns = tuple(
+        pa.chunked_array([pa.array([cells[i] for cells in kept], pa.string()).dictionary_encode()])
+        for i in range(len(names))
+    )
     odd = counts != len(names)
     texts = tuple(found.texts[head + 1 + i] for i in np.flatnonzero(odd))
     return _table(file, names, columns, lines[~odd], RaggedRows(lines[odd], texts, counts[odd]))
@@ -103,11 +109,18 @@ def _body(records: Records, text: bytes, file: str, header_row: int | None) -> t
 
 
 def read_csv(
-    data: bytes, file: str, *, encoding: str | None = None, delimiter: str = ",", header_row: int | None = None
+    data: bytes,
+    file: str,
+    *,
+    encoding: str | None = None,
+    delimiter: str = ",",
+    header_row: int | None = None,
+    all_different: Collection[str] = (),
 ) -> RawTable:
     """A delimited text. Row numbers are physical lines, quoted line breaks and blank lines counted.
 
-    header_row : line of the headings, counted from 1; by default the first that is not blank
+    header_row    : line of the headings, counted from 1; by default the first that is not blank
+    all_different : headings of columns whose texts are likely to be all different
     Raises CohortError where the bytes are no text, the text has no rows, or a quotation mark never closes.
     """
     text = decode(data, file, encoding)
@@ -122,7 +135,8 @@ def read_csv(
     even = body.cells == len(names)
     columns: tuple[pa.ChunkedArray, ...] | None = (pa.chunked_array([], pa.string()),) * len(names)
     if even.any():
-        columns = _arrow_columns(memoryview(text)[body.start[0] :], body, len(names), delimiter)
+        plain = [name.strip() in all_different for name in names]
+        columns = _arrow_columns(memoryview(text)[body.start[0] :], body, plain, delimiter)
         if columns is None:
             return _read_slowly(text, file, delimiter, header_row)
     odd = np.flatnonzero(~even)

@@ -1,12 +1,13 @@
 """Where the records of a delimited text lie: byte extents, physical lines and numbers of cells, from whole arrays."""
 
+from collections.abc import Iterator
 from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
 
 _QUOTE, _LINE_FEED, _RETURN = 34, 10, 13
-_BLOCK = 1 << 20
+_BLOCK = 1 << 18
 
 
 @dataclass(frozen=True)
@@ -33,36 +34,65 @@ class Records:
 
 @dataclass
 class _Scan:
-    """What is carried from block to block."""
+    """What is carried from block to block: quotation marks and delimiters counted, lines ended."""
 
     quotes: int = 0
     delimiters: int = 0
+    lines: int = 0
     stray_quote: bool = False
 
 
-def _inside(block: NDArray[np.uint8], before: int, delimiter: int, scan: _Scan) -> NDArray[np.bool_] | None:
-    """True for bytes between quotation marks; None where the block has none and lies outside."""
-    is_quote = block == _QUOTE
-    at = np.flatnonzero(is_quote)
-    if not len(at):
-        return np.ones(len(block), np.bool_) if scan.quotes & 1 else None
-    opening = at[(np.arange(len(at)) + scan.quotes) % 2 == 0]
-    previous = np.where(opening > 0, block[opening - 1], before)
-    allowed = np.isin(previous, (delimiter, _LINE_FEED, _RETURN, _QUOTE))
+@dataclass(frozen=True)
+class _Block:
+    """A stretch of the text, its bytes of interest, and the bytes just before and after it."""
+
+    bytes: NDArray[np.uint8]
+    at: NDArray[np.int64]
+    kind: NDArray[np.uint8]
+    before: int
+    after: int
+
+
+def _blocks(text: NDArray[np.uint8], delimiter: int) -> Iterator[tuple[int, _Block]]:
+    """The text in stretches, with the offset of each."""
+    for offset in range(0, len(text), _BLOCK):
+        block = text[offset : offset + _BLOCK]
+        end = offset + len(block)
+        of_interest = (block == _QUOTE) | (block == delimiter) | (block == _LINE_FEED) | (block == _RETURN)
+        at = np.flatnonzero(of_interest)
+        before = int(text[offset - 1]) if offset else _LINE_FEED
+        after = int(text[end]) if end < len(text) else 0
+        yield offset, _Block(block, at, block[at], before, after)
+
+
+def _outside(block: _Block, delimiter: int, scan: _Scan) -> NDArray[np.bool_] | None:
+    """True for bytes of interest that do not lie between quotation marks; None where all do not."""
+    is_quote = block.kind == _QUOTE
+    quotes = np.flatnonzero(is_quote)
+    if not len(quotes):
+        return np.zeros(len(block.at), np.bool_) if scan.quotes & 1 else None
+    opening = block.at[quotes[scan.quotes & 1 :: 2]]
+    previous = block.bytes[opening - 1]
+    if len(opening) and opening[0] == 0:
+        previous[0] = block.before
+    allowed = (previous == delimiter) | (previous == _QUOTE) | (previous == _LINE_FEED) | (previous == _RETURN)
     scan.stray_quote |= not allowed.all()
-    inside = (np.cumsum(is_quote, dtype=np.uint8) + np.uint8(scan.quotes & 1)) & 1
-    scan.quotes += len(at)
-    return inside.astype(np.bool_)
+    inside = np.cumsum(is_quote, dtype=np.uint8)
+    inside += np.uint8(scan.quotes & 1)
+    scan.quotes += len(quotes)
+    return (inside & 1) == 0
 
 
-def _line_ends(block: NDArray[np.uint8], after: int) -> NDArray[np.int64]:
-    """Offsets of the bytes that end a physical line: LF, or CR that no LF follows."""
-    ends = block == _LINE_FEED
-    returns = np.flatnonzero(block == _RETURN)
+def _line_ends(block: _Block) -> NDArray[np.bool_]:
+    """True for bytes of interest that end a physical line: LF, or CR that no LF follows."""
+    ends = block.kind == _LINE_FEED
+    returns = np.flatnonzero(block.kind == _RETURN)
     if len(returns):
-        following = np.where(returns + 1 < len(block), block[np.minimum(returns + 1, len(block) - 1)], after)
+        next_at = block.at[returns] + 1
+        last = len(block.bytes) - 1
+        following = np.where(next_at <= last, block.bytes[np.minimum(next_at, last)], block.after)
         ends[returns[following != _LINE_FEED]] = True
-    return np.flatnonzero(ends)
+    return ends
 
 
 def find_records(text: NDArray[np.uint8], delimiter: int) -> Records:
@@ -75,26 +105,22 @@ def find_records(text: NDArray[np.uint8], delimiter: int) -> Records:
         none = np.zeros(0, np.int64)
         return Records(none, none, none, none, False, 0)
     scan = _Scan()
-    ends, lines, delimiters, lines_before = [], [], [], 0
-    for offset in range(0, len(text), _BLOCK):
-        block = text[offset : offset + _BLOCK]
-        before = int(text[offset - 1]) if offset else _LINE_FEED
-        after = int(text[offset + len(block)]) if offset + len(block) < len(text) else 0
-        inside = _inside(block, before, delimiter, scan)
-        is_delimiter = block == delimiter
-        all_ends = _line_ends(block, after)
-        line_of_end = lines_before + 1 + np.arange(len(all_ends))
-        lines_before += len(all_ends)
-        if inside is not None:
-            is_delimiter &= ~inside
-            outside = ~inside[all_ends]
-            all_ends, line_of_end = all_ends[outside], line_of_end[outside]
+    stops, lines, delimiters = [], [], []
+    for offset, block in _blocks(text, delimiter):
+        outside = _outside(block, delimiter, scan)
+        is_delimiter = block.kind == delimiter
+        line_ends = np.flatnonzero(_line_ends(block))
+        ends, line = line_ends, scan.lines + 1 + np.arange(len(line_ends))
+        if outside is not None:
+            is_delimiter &= outside
+            ends, line = ends[outside[ends]], line[outside[ends]]
         places = np.flatnonzero(is_delimiter)
-        delimiters.append(scan.delimiters + np.searchsorted(places, all_ends))
+        delimiters.append(scan.delimiters + np.searchsorted(places, ends))
+        lines.append(line)
+        stops.append(offset + block.at[ends])
         scan.delimiters += len(places)
-        ends.append(offset + all_ends)
-        lines.append(line_of_end)
-    return _assemble(text, scan, np.concatenate(ends), np.concatenate(lines), np.concatenate(delimiters))
+        scan.lines += len(line_ends)
+    return _assemble(text, scan, np.concatenate(stops), np.concatenate(lines), np.concatenate(delimiters))
 
 
 def _assemble(

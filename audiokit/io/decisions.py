@@ -112,12 +112,12 @@ def read_log(folder: Path | str) -> "pd.DataFrame":
     Columns LOG_COLUMNS: as `read_decisions`, with undoes (nullable integer: the entry that this one undoes) and
     in_force (False where an undo that is itself in force undoes the entry). Raises DecisionError as `read_decisions`.
     """
-    import pandas as pd
-
     columns = LOG_COLUMNS[:-1]
     with reading(Path(folder)) as connection:
         query = f"SELECT {', '.join(columns)} FROM decision ORDER BY decision_id"
         rows = [] if connection is None else connection.execute(query).fetchall()
+    import pandas as pd  # Only now: a file that cannot be read is said at once.
+
     log = pd.DataFrame(rows, columns=list(columns), dtype=object)
     undos = [(int(row[0]), int(row[-1])) for row in rows if row[-1] is not None]
     log["in_force"] = ~log["decision_id"].isin(list(_undone(undos))).astype(bool)

@@ -75,7 +75,7 @@ def _map(table: RawTable, known: Sequence[str], mapping: Mapping[str, str], sect
                 + (f"; the nearest is {near[0]!r}" if near else ""),
                 f"correct cohort.toml; the file's headings are: {_listed(table.headings)}",
             )
-        if theirs != name and name in table.headings:
+        if theirs != name and name in table.headings and name not in mapping.values():
             raise CohortError(
                 f"{table.file}: {section} takes {name} from {theirs!r}, but the file also has a column {name!r}",
                 f"remove {name} from {section} in cohort.toml, or rename that column of the file",

@@ -1,5 +1,7 @@
 """Parquet to a RawTable: numbers and dates keep their types, texts come by their distinct values."""
 
+from collections.abc import Collection
+
 import numpy as np
 import pyarrow as pa
 import pyarrow.parquet
@@ -8,7 +10,7 @@ from pyarrow import types
 from audiokit.core.errors import CohortError
 from audiokit.io.headings import clean_headings
 from audiokit.io.raw import RawTable
-from audiokit.io.texts import is_readable_type
+from audiokit.io.texts import is_readable_type, is_text_type
 
 
 def _check_types(schema: pa.Schema, file: str) -> None:
@@ -21,15 +23,16 @@ def _check_types(schema: pa.Schema, file: str) -> None:
             )
 
 
-def read_parquet(data: bytes, file: str) -> RawTable:
+def read_parquet(data: bytes, file: str, *, all_different: Collection[str] = ()) -> RawTable:
     """A parquet file. The first row has number 2, as in a table with one row of headings.
 
+    all_different : headings of columns whose texts are likely to be all different
     Raises CohortError where the file is damaged, holds nested columns, or has no rows.
     """
     try:
         schema = pyarrow.parquet.read_schema(pa.BufferReader(data))
         _check_types(schema, file)
-        texts = [field.name for field in schema if types.is_string(field.type) or types.is_large_string(field.type)]
+        texts = [field.name for field in schema if is_text_type(field.type) and field.name not in all_different]
         table = pyarrow.parquet.read_table(pa.BufferReader(data), read_dictionary=texts)
     except (pa.ArrowException, OSError) as error:
         raise CohortError(

@@ -13,20 +13,24 @@ from numpy.typing import NDArray
 
 from audiokit.core.problems import PROBLEMS
 from audiokit.io.raw import RawTable
+from audiokit.io.texts import first_bytes
 from audiokit.model.cohort import QUARANTINE_COLUMNS
 
 _LONGEST_VALUE = 200
 _PLAIN = r"^[+-]?[0-9]+(?:[.,][0-9]+)?\s*\+?$"
-_FORMULA = r"^[=@\t\r+\-]"
+_FORMULA_STARTS = np.frombuffer(b"=@\t\r+-", np.uint8)
 
 Texts: TypeAlias = pa.StringArray
 
 
 def looks_like_formula(texts: Texts) -> NDArray[np.bool_]:
     """True for texts that a spreadsheet would run: they begin with = @ tab CR, or with + or - and are no number."""
-    starts = pc.match_substring_regex(texts, _FORMULA)
-    plain = pc.match_substring_regex(texts, _PLAIN)
-    return pc.and_(starts, pc.invert(plain)).to_numpy(zero_copy_only=False)
+    found = np.isin(first_bytes(texts), _FORMULA_STARTS)
+    suspects = np.flatnonzero(found)
+    if len(suspects):
+        plain = pc.match_substring_regex(texts.take(pa.array(suspects)), _PLAIN)
+        found[suspects] = ~plain.to_numpy(zero_copy_only=False)
+    return found
 
 
 def guard(texts: Texts) -> Texts:

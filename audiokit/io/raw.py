@@ -7,7 +7,7 @@ import pyarrow as pa
 import pyarrow.compute as pc
 from numpy.typing import NDArray
 
-from audiokit.io.texts import as_text, strip
+from audiokit.io.texts import as_text, is_text_type, strip
 
 
 @dataclass(frozen=True)
@@ -15,7 +15,7 @@ class Encoded:
     """A column as its distinct texts and, per row, which of them stands there.
 
     codes    : int32 index into `raw` and `stripped` [row]
-    raw      : distinct texts exactly as in the file, never null
+    raw      : texts exactly as in the file, never null; distinct, or all rows where nearly all differ
     stripped : the same without white space at either end; may hold equal texts twice
     """
 
@@ -41,7 +41,10 @@ class Encoded:
 
 
 def encode(column: pa.ChunkedArray) -> Encoded:
-    """Distinct texts of a column and their places."""
+    """Distinct texts of a column and their places; a column of plain texts is taken as it is."""
+    if is_text_type(column.type):
+        raw = as_text(pa.concat_arrays(column.chunks) if column.num_chunks else pa.array([], column.type))
+        return Encoded(np.arange(len(raw), dtype=np.int32), raw, strip(raw))
     if pa.types.is_dictionary(column.type):
         column = column.unify_dictionaries()
     else:
@@ -77,7 +80,8 @@ class RawTable:
 
     file     : the file's name as cohort.toml writes it
     headings : stripped, unique; "(column N)" where a column with data has none
-    columns  : one chunked array per heading, text or the file's own type
+    columns  : one chunked array per heading: the file's own type for numbers and dates, a dictionary for texts, or
+               plain texts where nearly all differ
     rows     : int64 source row of each record, counted from 1 [row]
     typed    : True where numbers come as numbers (xlsx, parquet), so that codes are compared by number too
     """

@@ -43,6 +43,7 @@ def read_table(source: SourceFile) -> RawTable:
     if not data:
         raise CohortError(f"{source.name}: the file is empty", "export the table again")
     settings = source.settings
+    all_different = {settings.columns.get("test_id", "test_id")}
     expected = {".csv": None, ".xlsx": _ZIP, ".parquet": _PARQUET}[suffix]
     for sign, what in _SIGNS.items():
         if data.startswith(sign) and sign != expected:
@@ -54,7 +55,12 @@ def read_table(source: SourceFile) -> RawTable:
         from audiokit.io.csv_reader import read_csv
 
         return read_csv(
-            data, source.name, encoding=settings.encoding, delimiter=settings.delimiter, header_row=settings.header_row
+            data,
+            source.name,
+            encoding=settings.encoding,
+            delimiter=settings.delimiter,
+            header_row=settings.header_row,
+            all_different=all_different,
         )
     if suffix == ".xlsx":
         from audiokit.io.xlsx_reader import read_xlsx
@@ -62,4 +68,4 @@ def read_table(source: SourceFile) -> RawTable:
         return read_xlsx(data, source.name, sheet=settings.sheet, header_row=settings.header_row)
     from audiokit.io.parquet_reader import read_parquet
 
-    return read_parquet(data, source.name)
+    return read_parquet(data, source.name, all_different=all_different)

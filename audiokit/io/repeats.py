@@ -9,6 +9,7 @@ import pyarrow as pa
 import pyarrow.compute as pc
 from numpy.typing import NDArray
 
+from audiokit.io.hashes import hash_texts, repeated
 from audiokit.io.raw import Encoded
 from audiokit.io.source_table import SourceTable
 
@@ -60,6 +61,20 @@ class Stack:
                 found[piece] = number[column.codes if rows is None else column.codes[own]]
         return found
 
+    def repeated_codes(self, name: str) -> Rows:
+        """Numbers as `codes` gives them, but NO_KEY for blank cells and for texts that occur once. [row]"""
+        hashes = np.zeros(len(self), np.int64)
+        blank = np.ones(len(self), np.bool_)
+        for i, table in enumerate(self.tables):
+            column = table.named(name)
+            if column is not None:
+                hashes[self.first[i] : self.first[i + 1]] = column.spread(hash_texts(column.stripped))
+                blank[self.first[i] : self.first[i + 1]] = column.blank()
+        rows = np.flatnonzero(repeated(hashes) & ~blank)
+        found = np.full(len(self), NO_KEY, np.int64)
+        found[rows] = self.codes(name, rows)
+        return found
+
 
 def _unify(columns: Sequence[Encoded | None]) -> tuple[list[NDArray[np.int64]], int]:
     """A number for each distinct text of each column, equal for equal texts; and the number of the empty text."""
@@ -90,10 +105,6 @@ def signatures(stack: Stack, rows: Rows) -> Rows:
     return found
 
 
-def _repeated(numbers: Rows) -> NDArray[np.bool_]:
-    return pd.Series(numbers).duplicated(keep=False).to_numpy()
-
-
 @dataclass(frozen=True)
 class Key:
     """What no two different rows may share.
@@ -116,9 +127,9 @@ def check_repeats(stack: Stack, near: Rows, key: Key | None, skip: NDArray[np.bo
     near : numbers that are equal wherever whole rows are equal, so that only rows sharing one need be compared
     skip : rows that take no part [row of the stack]
     """
-    candidate = _repeated(near)
+    candidate = repeated(near)
     if key is not None and not key.is_near:
-        candidate = candidate | (_repeated(key.numbers) & (key.numbers != NO_KEY))
+        candidate = candidate | (repeated(key.numbers) & (key.numbers != NO_KEY))
     rows = np.flatnonzero(candidate & ~skip)
     if not len(rows):
         return

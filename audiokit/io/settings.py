@@ -53,7 +53,9 @@ def _read_toml(folder: Path) -> TomlTable:
         line = data.count(b"\n", 0, error.start) + 1
         raise CohortError(f"{FILE_NAME}, line {line}: not UTF-8 text", "save the file as UTF-8") from None
     except tomllib.TOMLDecodeError as error:
-        raise CohortError(f"{FILE_NAME}: {error}", "correct that line; texts stand in quotation marks") from None
+        last = data.rstrip().count(b"\n") + 1
+        message = str(error).replace("at end of document", f"at line {last}, the end of the document")
+        raise CohortError(f"{FILE_NAME}: {message}", "correct that line; texts stand in quotation marks") from None
 
 
 def _as_of(table: TomlTable) -> datetime.date | None:

@@ -117,7 +117,7 @@ def _read_sheet(table: TomlTable) -> dict[str, Any]:
 def _read_encoding(table: TomlTable) -> str | None:
     name = table.text("encoding")
     try:
-        b"".decode(name or "utf-8")
+        "a".encode(name or "utf-8")
     except LookupError:
         raise table.error("encoding", f"{name!r} is not known", 'write for example "utf-8" or "cp1252"') from None
     return name

@@ -5,6 +5,7 @@ from decimal import Decimal
 import numpy as np
 import pyarrow as pa
 import pyarrow.compute as pc
+from numpy.typing import NDArray
 
 _LARGEST_EXACT_INTEGER = 2.0**53
 
@@ -45,16 +46,17 @@ def _timestamps(values: pa.Array) -> pa.Array:
     return pc.replace_substring_regex(texts, r"T00:00:00$", "")
 
 
+def is_text_type(kind: pa.DataType) -> bool:
+    """True for plain texts, whatever the width of their offsets."""
+    return pa.types.is_string(kind) or pa.types.is_large_string(kind) or pa.types.is_string_view(kind)
+
+
 def is_readable_type(kind: pa.DataType) -> bool:
     """True where `as_text` knows how to write values of this type."""
     types = pa.types
-    return any(
-        test(kind)
-        for test in (
-            types.is_string, types.is_large_string, types.is_string_view, types.is_boolean, types.is_integer,
-            types.is_floating, types.is_decimal, types.is_date, types.is_timestamp, types.is_time, types.is_null,
-        )
-    )  # fmt: skip
+    tests = (types.is_boolean, types.is_integer, types.is_floating, types.is_decimal)
+    more = (types.is_date, types.is_timestamp, types.is_time, types.is_null)
+    return is_text_type(kind) or any(test(kind) for test in (*tests, *more))
 
 
 def as_text(values: pa.Array) -> pa.StringArray:
@@ -81,3 +83,14 @@ def as_text(values: pa.Array) -> pa.StringArray:
 def strip(texts: pa.StringArray) -> pa.StringArray:
     """Texts without white space at either end."""
     return pc.utf8_trim_whitespace(texts)
+
+
+def first_bytes(texts: pa.StringArray) -> NDArray[np.uint8]:
+    """The first byte of each text, 0 where it is empty."""
+    found = np.zeros(len(texts), np.uint8)
+    _, offsets, data = texts.buffers()
+    if data is not None and data.size:
+        start = np.frombuffer(offsets, np.int32)[texts.offset : texts.offset + len(texts) + 1]
+        filled = start[1:] > start[:-1]
+        found[filled] = np.frombuffer(data, np.uint8)[start[:-1][filled]]
+    return found

@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 from audiokit.io.batch import TestBatch, detail_texts, given_ids
 from audiokit.io.cells import ParsedCells
 from audiokit.io.columns import THRESHOLD_COLUMNS
-from audiokit.io.repeats import NO_KEY, Key, Stack, check_repeats, combine
+from audiokit.io.repeats import Key, Stack, check_repeats, combine
 from audiokit.io.shared_columns import SharedColumns, cell_rules, threshold_cells
 
 
@@ -32,13 +32,8 @@ def check_wide_repeats(shared: Sequence[SharedColumns]) -> None:
     near = combine(stack.codes("person_id"), stamps)
     key = None
     if any(table.has("test_id") for table in stack.tables):
-        numbers = stack.codes("test_id")
-        blank = [t.column("test_id").blank() if t.has("test_id") else np.ones(len(t), np.bool_) for t in stack.tables]
-        key = Key(
-            np.where(np.concatenate(blank), NO_KEY, numbers),
-            "test_id",
-            "the same test_id stands with other contents in",
-        )
+        what = "the same test_id stands with other contents in"
+        key = Key(stack.repeated_codes("test_id"), "test_id", what)
     check_repeats(stack, near, key, np.concatenate([s.blank for s in shared]))
 
 

@@ -17,7 +17,8 @@ from audiokit.io.raw import RawTable
 from audiokit.io.texts import number_text
 
 _FORMULA_WITHOUT_RESULT = re.compile(
-    rb'<c r="([A-Z]+[0-9]+)"[^>]*><f[^>]*(?:/>|>[^<]*</f>)\s*(?:<v\s*/>|<v></v>)?\s*</c>'
+    rb"<(?:\w+:)?c\b(?P<cell>[^>]*)>\s*<(?:\w+:)?f\b[^>]*(?:/>|>[^<]*</(?:\w+:)?f>)\s*"
+    rb"(?P<empty><(?:\w+:)?v\s*/>|<(?:\w+:)?v></(?:\w+:)?v>)?\s*</(?:\w+:)?c>"
 )
 
 
@@ -67,10 +68,14 @@ def _rows(sheet: Any) -> Any:
 def _check_formulas(archive: zipfile.ZipFile, sheet: Any, file: str) -> None:
     """A formula whose result was never stored would read as an empty cell: that is refused."""
     content = archive.read(sheet._worksheet_path.lstrip("/"))
-    found = _FORMULA_WITHOUT_RESULT.search(content) if b"<f" in content else None
-    if found:
+    for found in _FORMULA_WITHOUT_RESULT.finditer(content):
+        cell = found.group("cell")
+        if found.group("empty") and b't="str"' in cell:
+            continue  # the stored result is an empty text
+        place = re.search(rb'\br="(\w+)"', cell)
+        where = f", cell {place.group(1).decode()}" if place else ""
         raise CohortError(
-            f"{file}, sheet {sheet.title!r}, cell {found.group(1).decode()}: the formula has no stored result",
+            f"{file}, sheet {sheet.title!r}{where}: the formula has no stored result",
             "open the workbook in a spreadsheet program and save it, or replace formulas by their values",
         )
 
@@ -88,7 +93,7 @@ def _columns(rows: Sequence[tuple[Any, ...]], width: int) -> list[pa.ChunkedArra
     columns = []
     for i in range(width):
         texts = [cell_text(row[i]) if i < len(row) else "" for row in rows]
-        columns.append(pa.chunked_array([pa.array(texts, pa.string())]))
+        columns.append(pa.chunked_array([pa.array(texts, pa.string()).dictionary_encode()]))
     return columns
 
 

@@ -36,31 +36,12 @@ def interval_ends(sums: Sums, correction: NDArray[np.int16] | None = None) -> En
     return Ends(low, high)
 
 
-def shift_met(
-    low: NDArray[np.int16],
-    high: NDArray[np.int16],
-    base_low: NDArray[np.int16],
-    base_high: NDArray[np.int16],
-    limit: int,
-) -> NDArray[np.int8]:
-    """Whether the shift from the baseline reaches `limit`: codes of `Met`. All ends and the limit in one integer unit."""
-    return _three_valued(low - base_high >= limit, high - base_low < limit)
-
-
-def level_met(ends: Ends, limit: int) -> NDArray[np.int8]:
-    """Whether the hearing threshold level reaches `limit`: codes of `Met`."""
-    return _three_valued(ends.low >= limit, ends.high < limit)
-
-
-def _three_valued(yes: NDArray[np.bool_], no: NDArray[np.bool_]) -> NDArray[np.int8]:
-    met = yes.view(np.int8) - no.view(np.int8)
+def three_valued(low: NDArray[np.int16], high: NDArray[np.int16], limit: int) -> NDArray[np.int8]:
+    """Whether intervals reach `limit`, all in one integer unit: yes if low does, no if high does not; codes of `Met`."""
+    met = (low >= limit).view(np.int8)
+    met -= (high < limit).view(np.int8)
     met += np.int8(Met.UNKNOWN)
     return met
-
-
-def both_met(first: NDArray[np.int8], second: NDArray[np.int8]) -> NDArray[np.int8]:
-    """Both of two criteria: no if either is no, else unknown if either is unknown."""
-    return np.minimum(first, second)
 
 
 def bound_of(flags: NDArray[np.uint8], base_flags: NDArray[np.uint8]) -> NDArray[np.int8]:

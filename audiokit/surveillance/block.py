@@ -1,6 +1,7 @@
 """The compact arrays that one criterion is judged on, for a stretch of people that is small enough for the cache."""
 
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 from numpy.typing import NDArray
@@ -32,6 +33,11 @@ class History:
     def __len__(self) -> int:
         return len(self.day)
 
+    @cached_property
+    def counts(self) -> NDArray[np.int64]:
+        """Number of tests of each person."""
+        return np.diff(self.first)
+
     def part(self, people: slice) -> "History":
         """The stretch of consecutive people, with indices that start at nought."""
         first = self.first[people.start : people.stop + 1]
@@ -55,6 +61,7 @@ class Judged:
     total : the lower end of the sums as measured, never corrected, tenths of a dB
     level : codes of `Met` for the criterion's level condition, None where it has none
     limit : the shift's limit, tenths of a dB times the number of frequencies
+    improvement : the revision rule's limit for a better test, in the same unit
     """
 
     low: NDArray[np.int16]
@@ -62,6 +69,7 @@ class Judged:
     total: NDArray[np.int16]
     level: NDArray[np.int8] | None
     limit: int
+    improvement: int
 
     def part(self, tests: slice) -> "Judged":
         """The same for a stretch of tests."""
@@ -71,6 +79,7 @@ class Judged:
             total=self.total[:, tests],
             level=None if self.level is None else self.level[:, tests],
             limit=self.limit,
+            improvement=self.improvement,
         )
 
 

@@ -5,7 +5,6 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from audiokit.core.vocabulary import Met
 from audiokit.surveillance.block import History, Judged
 from audiokit.surveillance.revision import (
     DECISION,
@@ -13,24 +12,23 @@ from audiokit.surveillance.revision import (
     Effective,
     Hits,
     OtherFrequencies,
-    RevisionLimits,
     choose,
     find_hits,
 )
-from audiokit.surveillance.walk import Changes, Finder, Trail
+from audiokit.surveillance.walk import Changes, Finder, Round, Trail
 
 Indices = NDArray[np.int32]
 Mask = NDArray[np.bool_]
 _NEVER = np.int32(np.iinfo(np.int32).max)
 
 
-def by_persistence(history: History, judged: Judged, limits: RevisionLimits, other: OtherFrequencies) -> Finder:
+def by_persistence(history: History, judged: Judged, months: int, other: OtherFrequencies) -> Finder:
     """The first revision in each person's present sequences; both ears where they change at the same test."""
 
-    def find(rows: Indices | None, trail: Trail, since: Indices) -> tuple[Changes, Indices]:
+    def find(view: Round, trail: Trail, since: Indices) -> tuple[Changes, Indices]:
         found = []
         for ear in (0, 1):
-            hits = revision_hits(history, judged, trail, ear, rows, limits, since)
+            hits = revision_hits(history, judged, trail, ear, view, months, since)
             hits = hits.where(_first_of_each(history.person[hits.slot]))
             changes = Changes(
                 person=history.person[hits.slot],
@@ -47,39 +45,23 @@ def by_persistence(history: History, judged: Judged, limits: RevisionLimits, oth
 
 
 def revision_hits(
-    history: History,
-    judged: Judged,
-    trail: Trail,
-    ear: int,
-    rows: Indices | None,
-    limits: RevisionLimits,
-    since: Indices | None,
+    history: History, judged: Judged, trail: Trail, ear: int, view: Round, months: int, since: Indices | None
 ) -> Hits:
-    """The effective tests of one ear that reveal a revision, among the tests `rows` (None: all).
+    """The effective tests of one ear that reveal a revision, among those of a round.
 
     since : first test of each ear's present sequence [ear, person]; earlier ones are left out; None: all sequences
+
+    Age never takes hearing for better, so a measured shift is at least the corrected one that the round was sieved by.
     """
-    low, high, total = judged.low[ear], judged.high[ear], judged.total[ear]
-    met = trail.met[ear] if rows is None else trail.met[ear][rows]
-    base = trail.base[ear] if rows is None else trail.base[ear][rows]
-    # Age never takes hearing for better, so the corrected shift is at most the measured one: a sieve for the few.
-    lower = (high if rows is None else high[rows]) - low[base] <= -limits.improvement
-    if rows is None:
-        lower &= ~history.before
-    better = _tests(lower, rows)
-    better = better[total[better] - total[trail.base[ear][better]] <= -limits.improvement]
-    held = _tests(met == Met.YES, rows)
+    total = judged.total[ear]
+    better = view.better[ear]
+    better = better[total[better] - total[trail.base[ear][better]] <= -judged.improvement]
     return find_hits(
         _effective(history, trail, ear, _exact(judged, trail, ear, better), since),
-        _effective(history, trail, ear, _exact(judged, trail, ear, held), since),
+        _effective(history, trail, ear, _exact(judged, trail, ear, view.yes[ear]), since),
         history.day,
-        limits,
+        months,
     )
-
-
-def _tests(mask: Mask, rows: Indices | None) -> Indices:
-    at = np.flatnonzero(mask)
-    return at.astype(np.int32) if rows is None else rows[at]
 
 
 def _exact(judged: Judged, trail: Trail, ear: int, tests: Indices) -> Indices:
@@ -102,11 +84,10 @@ def _effective(history: History, trail: Trail, ear: int, tests: Indices, since: 
 def by_event(history: History, as_of_day: int, window_days: int) -> Finder:
     """The first event that stands in each person's present sequences: confirmed, without retest, or found at retest."""
 
-    def find(rows: Indices | None, trail: Trail, since: Indices) -> tuple[Changes, Indices]:
+    def find(view: Round, trail: Trail, since: Indices) -> tuple[Changes, Indices]:
         found = []
         for ear in (0, 1):
-            met = trail.met[ear] if rows is None else trail.met[ear][rows]
-            slot, test, decided = trail.standing(ear, _tests(met == Met.YES, rows))
+            slot, test, decided = trail.standing(ear, view.yes[ear])
             person = history.person[slot]
             stands = decided | (history.day[slot] + window_days < as_of_day)
             stands &= slot >= since[ear][person]
@@ -166,7 +147,7 @@ def by_decision(history: History, decisions: BaselineDecisions) -> Finder:
     """
     pending = np.ones(len(decisions.person), dtype=bool)
 
-    def find(rows: Indices | None, trail: Trail, since: Indices) -> tuple[Changes, Indices]:
+    def find(view: Round, trail: Trail, since: Indices) -> tuple[Changes, Indices]:
         left = np.flatnonzero(pending)
         position = _first_slot_after(history, trail, decisions, left)
         soonest = np.full(len(history.initial), _NEVER, dtype=np.int32)

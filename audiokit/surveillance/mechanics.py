@@ -9,13 +9,13 @@ import numpy as np
 from numpy.typing import NDArray
 
 from audiokit.core.vocabulary import Met
-from audiokit.rules.spec import Criterion, Rulebook, tenths
+from audiokit.rules.spec import Criterion, Rulebook
 from audiokit.surveillance.block import History, Judged
 from audiokit.surveillance.finders import BaselineDecisions, by_decision, by_event, by_persistence, revision_hits
-from audiokit.surveillance.revision import OtherFrequencies, RevisionLimits, choose
-from audiokit.surveillance.walk import Changes, Trail, walk, walk_fixed
+from audiokit.surveillance.revision import OtherFrequencies, choose
+from audiokit.surveillance.walk import Changes, Round, Trail, candidates, walk, walk_fixed
 
-BLOCK_TESTS = 1 << 16
+BLOCK_TESTS = 1 << 17
 """Tests in a block: small enough for the cache, large enough that the cost of each numpy call vanishes."""
 
 
@@ -60,27 +60,29 @@ def run_mechanics(
     judged : by criterion id, what each compares      other : the frequencies outside the revision criterion's own
     """
     stretches = _stretches(history.first)
-    trails = {c.id: _empty_trail(len(history)) for c in rulebook.criteria}
-    changes: dict[str, list[Changes]] = {c.id: [] for c in rulebook.criteria}
-    proposals: dict[str, list[Changes]] = {c.id: [] for c in rulebook.criteria}
+    trails = {criterion.id: Trail.empty(len(history)) for criterion in rulebook.criteria}
 
-    def work(people: slice) -> dict[str, tuple[Trail, Changes]]:
-        return _block(rulebook, history, judged, other, decisions, plan, people)
+    def work(people: slice) -> dict[str, tuple[Changes, Changes]]:
+        return _block(rulebook, history, judged, other, decisions, plan, people, trails)
 
+    parts: list[dict[str, tuple[Changes, Changes]]] = []
     with ThreadPoolExecutor(max_workers=plan.workers) as pool:
         for number, (people, made) in enumerate(zip(stretches, pool.map(work, stretches), strict=True), start=1):
             offset = int(history.first[people.start])
-            for criterion_id, (trail, proposed) in made.items():
-                _place(trails[criterion_id], trail, offset)
-                changes[criterion_id].append(_shifted(trail.changes, people.start, offset))
-                proposals[criterion_id].append(_shifted(proposed, people.start, offset))
+            parts.append(
+                {
+                    k: (_shifted(c, people.start, offset), _shifted(p, people.start, offset))
+                    for k, (c, p) in made.items()
+                }
+            )
             if progress is not None:
                 progress("judging", number, len(stretches))
     findings = {}
     for criterion in rulebook.criteria:
         trail = trails[criterion.id]
-        trail.changes = Changes.join(changes[criterion.id])
-        findings[criterion.id] = Findings(criterion, judged[criterion.id], trail, Changes.join(proposals[criterion.id]))
+        trail.changes = Changes.join([part[criterion.id][0] for part in parts])
+        proposals = Changes.join([part[criterion.id][1] for part in parts])
+        findings[criterion.id] = Findings(criterion, judged[criterion.id], trail, proposals)
     return findings
 
 
@@ -102,46 +104,56 @@ def _block(
     decisions: BaselineDecisions,
     plan: Plan,
     people: slice,
-) -> dict[str, tuple[Trail, Changes]]:
+    trails: dict[str, Trail],
+) -> dict[str, tuple[Changes, Changes]]:
+    """Judge a stretch of people into the trails. Returns each criterion's changes and proposals."""
     part = history.part(people)
     tests = slice(int(history.first[people.start]), int(history.first[people.stop]))
-    made: dict[str, tuple[Trail, Changes]] = {}
+    trail_of = {name: trail.part(tests) for name, trail in trails.items()}
+    proposals: dict[str, Changes] = {}
     for criterion in rulebook.criteria:
-        mine = judged[criterion.id].part(tests)
-        opened = [made[o][0].met for o in criterion.retest_started_by.value if o != criterion.id]
-        opened_by = (np.stack(opened) == Met.YES).any(axis=(0, 1)) if opened else None
+        mine, trail = judged[criterion.id].part(tests), trail_of[criterion.id]
+        openers = [trail_of[o].met for o in criterion.retest_started_by.value if o != criterion.id]
+        opened_by = _met_in_either_ear(openers) if openers else None
         window = criterion.retest_window_days.value
-        proposed = Changes.none()
+        reference = criterion.baseline_in_force_of
+        proposals[criterion.id] = Changes.none()
         if criterion.baseline.value == "revised":
-            limits = _limits(rulebook, criterion)
-            elsewhere = other.part(tests)
+            months, elsewhere = rulebook.revision.persistence_months.value, other.part(tests)
             if plan.automatic:
-                trail = walk(part, mine, opened_by, window, by_persistence(part, mine, limits, elsewhere))
+                find = by_persistence(part, mine, months, elsewhere)
             else:
-                own = decisions.part(people, tests.start)
-                trail = walk(part, mine, opened_by, window, by_decision(part, own))
-                proposed = _proposals(part, mine, trail, limits, elsewhere)
-        elif plan.in_force and criterion.baseline_in_force_of is not None:
-            trail = walk_fixed(part, mine, opened_by, window, made[criterion.baseline_in_force_of.value][0].base)
+                find = by_decision(part, decisions.part(people, tests.start))
+            view = walk(part, mine, opened_by, window, find, trail)
+            if not plan.automatic:
+                view = view or candidates(part, mine, trail)
+                proposals[criterion.id] = _proposals(part, mine, trail, view, months, elsewhere)
+        elif plan.in_force and reference is not None:
+            base = trail_of[reference.value].base
+            walk_fixed(part, mine, opened_by, window, base, trail)
         else:
-            trail = walk(part, mine, opened_by, window, by_event(part, plan.as_of_day, window))
-        made[criterion.id] = (trail, proposed)
-    return made
+            find = by_event(part, plan.as_of_day, window)
+            walk(part, mine, opened_by, window, find, trail)
+    for trail in trail_of.values():
+        _count_from_start(trail, tests.start)
+    return {name: (trail_of[name].changes, proposals[name]) for name in trail_of}
 
 
-def _limits(rulebook: Rulebook, criterion: Criterion) -> RevisionLimits:
-    count = len(criterion.frequencies_hz.value)
-    revision = rulebook.revision
-    return RevisionLimits(tenths(revision.improvement_at_least_db, count), revision.persistence_months.value)
+def _met_in_either_ear(answers: list[NDArray[np.int8]]) -> NDArray[np.int32]:
+    """Tests that met one of some criteria in one ear or the other, ascending; answers [ear, test] of each."""
+    met = np.zeros(answers[0].shape[1], dtype=bool)
+    for answer in answers:
+        met |= (answer[0] == Met.YES) | (answer[1] == Met.YES)
+    return np.flatnonzero(met).astype(np.int32)
 
 
 def _proposals(
-    history: History, judged: Judged, trail: Trail, limits: RevisionLimits, other: OtherFrequencies
+    history: History, judged: Judged, trail: Trail, view: Round, months: int, other: OtherFrequencies
 ) -> Changes:
     """Every revision the rules would make on the sequences as they are, each distinct one where it is first revealed."""
     found = []
     for ear in (0, 1):
-        hits = revision_hits(history, judged, trail, ear, None, limits, None)
+        hits = revision_hits(history, judged, trail, ear, view, months, None)
         new = choose(hits, judged.total[ear], ear, other)
         _, first = np.unique(new.astype(np.int64) * 2 + hits.reason, return_index=True)
         first.sort()
@@ -159,24 +171,12 @@ def _proposals(
     return Changes.join(found)
 
 
-def _empty_trail(tests: int) -> Trail:
-    return Trail(
-        base=np.empty((2, tests), dtype=np.int32),
-        met=np.empty((2, tests), dtype=np.int8),
-        owner=np.empty(tests, dtype=np.int32),
-        decider=np.empty(tests, dtype=np.int32),
-        sequence=np.empty((2, tests), dtype=np.int16),
-        changes=Changes.none(),
-    )
-
-
-def _place(whole: Trail, part: Trail, offset: int) -> None:
-    tests = slice(offset, offset + len(part.owner))
-    whole.base[:, tests] = part.base + np.int32(offset)
-    whole.met[:, tests] = part.met
-    whole.owner[tests] = part.owner + np.int32(offset)
-    whole.decider[tests] = np.where(part.decider < 0, -1, part.decider + np.int32(offset))
-    whole.sequence[:, tests] = part.sequence
+def _count_from_start(trail: Trail, offset: int) -> None:
+    """Turn a block's indices into those of the whole history."""
+    shift = np.int32(offset)
+    trail.base += shift
+    trail.owner += shift
+    trail.decider[trail.decider >= 0] += shift
 
 
 def _shifted(changes: Changes, person: int, test: int) -> Changes:

@@ -10,7 +10,7 @@ import pandas as pd
 from numpy.typing import NDArray
 
 from audiokit.core.dates import to_days
-from audiokit.measures.shifts import interval_ends, level_met
+from audiokit.measures.shifts import interval_ends, three_valued
 from audiokit.measures.sums import Sums, threshold_sums
 from audiokit.model.cohort import Cohort
 from audiokit.model.grid import ThresholdGrid
@@ -130,7 +130,7 @@ def _review_book(
         if settings.age_correction and criterion.age_table is not None:
             table = age_table(criterion.age_table.value)
             ages[criterion.id] = age_correction(table, frequencies, cohort.people, grid)
-        judged[criterion.id] = _judged(criterion, sums[criterion.id], ages.get(criterion.id))
+        judged[criterion.id] = _judged(rulebook, criterion, sums[criterion.id], ages.get(criterion.id))
     automatic = settings.baseline_revision == "automatic"
     decisions = baseline_decisions(cohort.decisions, grid, cohort.people, history, as_of_day, automatic)
     plan = Plan(as_of_day, automatic, settings.recording_baseline == "in_force")
@@ -146,13 +146,21 @@ def _review_book(
     return BookReview(rulebook, findings, sums, ages, events, baselines, decisions)
 
 
-def _judged(criterion: Criterion, sums: Sums, ages: AgeCorrection | None) -> Judged:
+def _judged(rulebook: Rulebook, criterion: Criterion, sums: Sums, ages: AgeCorrection | None) -> Judged:
     correction = None if ages is None else ages.value * np.int16(10)
     ends = interval_ends(sums, correction)
     level = None
     if criterion.level_at_least_db is not None:
-        level = level_met(interval_ends(sums), tenths(criterion.level_at_least_db, sums.count))
-    return Judged(ends.low, ends.high, sums.total, level, tenths(criterion.shift_at_least_db, sums.count))
+        levels = interval_ends(sums)
+        level = three_valued(levels.low, levels.high, tenths(criterion.level_at_least_db, sums.count))
+    return Judged(
+        low=ends.low,
+        high=ends.high,
+        total=sums.total,
+        level=level,
+        limit=tenths(criterion.shift_at_least_db, sums.count),
+        improvement=tenths(rulebook.revision.improvement_at_least_db, sums.count),
+    )
 
 
 def _other_frequencies(grid: ThresholdGrid, criterion: Criterion) -> OtherFrequencies:

@@ -16,14 +16,6 @@ REASONS = ("improvement", "persistent_shift", "decision", "initial", "event")
 
 
 @dataclass(frozen=True)
-class RevisionLimits:
-    """improvement : better by at least this much, sums in tenths of a dB; months : calendar months of persistence."""
-
-    improvement: int
-    months: int
-
-
-@dataclass(frozen=True)
 class Effective:
     """Some effective tests of one ear, in order: periodic tests, each replaced by the retest that decided it.
 
@@ -54,27 +46,27 @@ class Hits:
         return Hits(self.slot[keep], self.test[keep], self.earlier[keep], self.reason[keep])
 
 
-def find_hits(better: Effective, held: Effective, day: NDArray[np.int32], limits: RevisionLimits) -> Hits:
+def find_hits(better: Effective, held: Effective, day: NDArray[np.int32], months: int) -> Hits:
     """Every effective test at which a rule holds; one ear.
 
-    better : those with an exact shift, never age-corrected, of at most -limits.improvement
-    held   : those with an exact shift that met the criterion
+    better : those with an exact shift, never age-corrected, that is better by the revision limit
+    held   : those with an exact shift that met the criterion, so that none is in both
+    months : calendar months from a run's first test to the one that shows it to persist
 
     A test that is in neither interrupts: it is no partner of the first rule and ends a run of the second.
     """
     improved = np.flatnonzero(better.follows)
-    starts_run = ~held.follows
-    run_first = held.test[starts_run]
-    run = np.cumsum(starts_run) - 1
-    persists = ~starts_run & (day[held.test] >= add_months(day[run_first], limits.months)[run])
-    persists &= ~np.isin(held.slot, better.slot[improved])
-    slot = np.concatenate((better.slot[improved], held.slot[persists]))
+    later = np.flatnonzero(held.follows)
+    first = np.maximum.accumulate(np.where(held.follows, 0, np.arange(len(held.slot))))[later]
+    persists = day[held.test[later]] >= add_months(day[held.test[first]], months)
+    later, first = later[persists], first[persists]
+    slot = np.concatenate((better.slot[improved], held.slot[later]))
     order = np.argsort(slot, kind="stable")
-    reason = np.repeat(np.array([IMPROVEMENT, PERSISTENT_SHIFT], dtype=np.int8), (len(improved), persists.sum()))
+    reason = np.repeat(np.array([IMPROVEMENT, PERSISTENT_SHIFT], dtype=np.int8), (len(improved), len(later)))
     return Hits(
         slot=slot[order],
-        test=np.concatenate((better.test[improved], held.test[persists]))[order],
-        earlier=np.concatenate((better.test[improved - 1], run_first[run][persists]))[order],
+        test=np.concatenate((better.test[improved], held.test[later]))[order],
+        earlier=np.concatenate((better.test[improved - 1], held.test[first]))[order],
         reason=reason[order],
     )
 

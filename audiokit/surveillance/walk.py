@@ -11,7 +11,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from audiokit.core.vocabulary import Met
-from audiokit.measures.shifts import both_met, shift_met
+from audiokit.measures.shifts import three_valued
 from audiokit.surveillance.block import History, Judged
 from audiokit.surveillance.runs import deciding_retests, find_runs, follows_within, index_ranges
 
@@ -75,6 +75,29 @@ class Trail:
     sequence: NDArray[np.int16]
     changes: Changes
 
+    @staticmethod
+    def empty(tests: int) -> "Trail":
+        """Room for so many tests."""
+        return Trail(
+            base=np.empty((2, tests), dtype=np.int32),
+            met=np.empty((2, tests), dtype=np.int8),
+            owner=np.empty(tests, dtype=np.int32),
+            decider=np.empty(tests, dtype=np.int32),
+            sequence=np.empty((2, tests), dtype=np.int16),
+            changes=Changes.none(),
+        )
+
+    def part(self, tests: slice) -> "Trail":
+        """A view of a stretch of tests: what is written to it is written here."""
+        return Trail(
+            self.base[:, tests],
+            self.met[:, tests],
+            self.owner[tests],
+            self.decider[tests],
+            self.sequence[:, tests],
+            Changes.none(),
+        )
+
     def standing(self, ear: int, tests: Indices) -> tuple[Indices, Indices, Mask]:
         """Of some compared tests those that stand as a periodic result in one ear: the periodic test itself, or the
         retest that decides the ear.
@@ -89,25 +112,39 @@ class Trail:
         return owner[stands], tests[stands], decided[stands]
 
 
-Finder = Callable[[Indices | None, Trail, Indices], tuple[Changes, Indices]]
-"""Given the tests judged in this round (None: all), the trail and the first test of each ear's present sequence
-[ear, person]: the next change of each person (both ears where they change together) and the index of the first test
-that it holds for."""
+@dataclass(frozen=True)
+class Round:
+    """The few among the tests judged in a round that a baseline can change by, ascending; one array per ear.
+
+    yes    : met the criterion
+    better : perhaps better than the baseline by the revision limit: the corrected shift is, if it is a number at all
+    """
+
+    yes: tuple[Indices, Indices]
+    better: tuple[Indices, Indices]
 
 
-def walk(history: History, judged: Judged, opened_by: Mask | None, window_days: int, find: Finder) -> Trail:
-    """Judge every test of a block. `opened_by` marks tests that open the retest window by another criterion."""
-    trail = _blank_trail(history)
+Finder = Callable[[Round, Trail, Indices], tuple[Changes, Indices]]
+"""Given a round, the trail and the first test of each ear's present sequence [ear, person]: the next change of each
+person (both ears where they change together) and the index of the first test that it holds for."""
+
+
+def walk(
+    history: History, judged: Judged, opened_by: Indices | None, window_days: int, find: Finder, trail: Trail
+) -> Round | None:
+    """Judge every test of a block into `trail`. Returns the round of all tests where no baseline changed, else None.
+
+    opened_by : tests that open the retest window by another criterion, ascending
+    """
+    _start(history, trail)
     follows = follows_within(history.linkable, history.day, window_days)
-    follows &= ~history.before
     begin = np.where(history.initial < 0, history.first[:-1], history.initial + 1).astype(np.int32)
     end = history.first[1:].astype(np.int32)
     since = np.stack((begin, begin))
-    rows: Indices | None = None
+    view = first = _judge_all(history, judged, trail, follows, opened_by, window_days)
     found: list[Changes] = []
     while True:
-        _judge(history, judged, trail, rows, follows, opened_by, window_days)
-        changes, from_row = find(rows, trail, since)
+        changes, from_row = find(view, trail, since)
         if not len(changes.person):
             break
         found.append(changes)
@@ -119,82 +156,111 @@ def walk(history: History, judged: Judged, opened_by: Mask | None, window_days: 
         if not len(active):
             break
         rows, _ = index_ranges(np.minimum(since[0, active], since[1, active]), end[active])
+        view = _judge(history, judged, trail, rows, follows, opened_by, window_days)
     trail.changes = Changes.join(found)
-    return trail
+    return None if found else first
 
 
-def walk_fixed(history: History, judged: Judged, opened_by: Mask | None, window_days: int, base: Indices) -> Trail:
+def walk_fixed(
+    history: History, judged: Judged, opened_by: Indices | None, window_days: int, base: Indices, trail: Trail
+) -> None:
     """Judge every test against given baselines [ear, test]; nothing changes them here."""
-    trail = _blank_trail(history)
-    trail.base = base
+    _start(history, trail)
+    trail.base[:] = base
     follows = follows_within(history.linkable, history.day, window_days)
-    follows &= ~history.before
-    _judge(history, judged, trail, np.flatnonzero(~history.before).astype(np.int32), follows, opened_by, window_days)
-    return trail
+    rows = np.flatnonzero(~history.before).astype(np.int32)
+    _judge(history, judged, trail, rows, follows, opened_by, window_days)
 
 
-def _blank_trail(history: History) -> Trail:
-    tests = len(history)
-    initial = np.repeat(history.initial, np.diff(history.first))
-    return Trail(
-        base=np.stack((initial, initial)),
-        met=np.full((2, tests), Met.UNKNOWN, dtype=np.int8),
-        owner=np.arange(tests, dtype=np.int32),
-        decider=np.full(tests, -1, dtype=np.int32),
-        sequence=np.zeros((2, tests), dtype=np.int16),
-        changes=Changes.none(),
-    )
+def candidates(history: History, judged: Judged, trail: Trail) -> Round:
+    """The round that would judge all tests against the baselines that the trail has now."""
+    rows = np.flatnonzero(~history.before).astype(np.int32)
+    picked = [_compare(judged, trail, rows, ear) for ear in (0, 1)]
+    return Round((picked[0][0], picked[1][0]), (picked[0][1], picked[1][1]))
+
+
+def _start(history: History, trail: Trail) -> None:
+    initial = np.repeat(history.initial, history.counts)
+    trail.base[0] = initial
+    trail.base[1] = initial
+    trail.owner[:] = np.arange(len(history), dtype=np.int32)
+    trail.decider[:] = -1
+    trail.sequence[:] = 0
+
+
+def _judge_all(
+    history: History, judged: Judged, trail: Trail, follows: Mask, opened_by: Indices | None, window_days: int
+) -> Round:
+    """First round, on whole columns: everybody is compared with the initial baseline."""
+    picked = []
+    after = ~history.before
+    for ear in (0, 1):
+        low, high = judged.low[ear], judged.high[ear]
+        base_high = np.repeat(high[history.initial], history.counts)
+        base_low = np.repeat(low[history.initial], history.counts)
+        lower, upper = np.subtract(low, base_high, out=base_high), np.subtract(high, base_low, out=base_low)
+        met = three_valued(lower, upper, judged.limit)
+        if judged.level is not None:
+            np.minimum(met, judged.level[ear], out=met)
+        np.putmask(met, history.before, Met.UNKNOWN)
+        trail.met[ear] = met
+        better = upper <= -judged.improvement
+        better &= after
+        picked.append((_positions(met == Met.YES), _positions(better)))
+    view = Round((picked[0][0], picked[1][0]), (picked[0][1], picked[1][1]))
+    _link_retests(history, trail, view, follows, opened_by, window_days)
+    return view
 
 
 def _judge(
     history: History,
     judged: Judged,
     trail: Trail,
-    rows: Indices | None,
+    rows: Indices,
     follows: Mask,
-    opened_by: Mask | None,
+    opened_by: Indices | None,
     window_days: int,
-) -> None:
-    """Compare the tests of this round with their baselines and find their retest runs."""
-    triggers = _compare_all(history, judged, trail) if rows is None else _compare(judged, trail, rows)
+) -> Round:
+    """Compare some tests, always all of a person from one on, with their baselines and find their retest runs."""
+    picked = [_compare(judged, trail, rows, ear) for ear in (0, 1)]
+    trail.owner[rows] = rows
+    trail.decider[rows] = -1
+    view = Round((picked[0][0], picked[1][0]), (picked[0][1], picked[1][1]))
     if opened_by is not None:
-        triggers |= opened_by if rows is None else opened_by[rows]
-    triggers &= follows if rows is None else follows[rows]
-    candidates = np.flatnonzero(triggers)
-    candidates = candidates.astype(np.int32) if rows is None else rows[candidates]
-    starts, ends = find_runs(candidates, history.linkable, history.day, window_days)
-    if rows is not None:
-        trail.owner[rows] = rows
-        trail.decider[rows] = -1
+        judged_now = np.zeros(len(history), dtype=bool)
+        judged_now[rows] = True
+        opened_by = opened_by[judged_now[opened_by]]
+    _link_retests(history, trail, view, follows, opened_by, window_days)
+    return view
+
+
+def _compare(judged: Judged, trail: Trail, rows: Indices, ear: int) -> tuple[Indices, Indices]:
+    """Judge some tests in one ear. Returns those that met the criterion and those that may be better."""
+    low, high, base = judged.low[ear], judged.high[ear], trail.base[ear].take(rows)
+    lower = low.take(rows)
+    lower -= high.take(base)
+    upper = high.take(rows)
+    upper -= low.take(base)
+    met = three_valued(lower, upper, judged.limit)
+    if judged.level is not None:
+        np.minimum(met, judged.level[ear].take(rows), out=met)
+    trail.met[ear][rows] = met
+    return rows[met == Met.YES], rows[upper <= -judged.improvement]
+
+
+def _link_retests(
+    history: History, trail: Trail, view: Round, follows: Mask, opened_by: Indices | None, window_days: int
+) -> None:
+    openers = [*view.yes] if opened_by is None else [*view.yes, opened_by]
+    starts = np.unique(np.concatenate([tests[follows[tests]] for tests in openers]))
+    starts, ends = find_runs(starts, history.linkable, history.day, window_days)
     retests, lengths = index_ranges(starts + np.int32(1), ends)
     trail.owner[retests] = np.repeat(starts, lengths)
     trail.decider[starts] = deciding_retests(starts, ends, trail.met, Met.UNKNOWN)
 
 
-def _compare_all(history: History, judged: Judged, trail: Trail) -> Mask:
-    """First round, without gathering: everybody has the initial baseline. Returns "yes in either ear"."""
-    triggers = np.zeros(len(history), dtype=bool)
-    for ear in (0, 1):
-        low, high, base = judged.low[ear], judged.high[ear], trail.base[ear]
-        met = shift_met(low, high, low[base], high[base], judged.limit)
-        if judged.level is not None:
-            met = both_met(met, judged.level[ear])
-        np.putmask(met, history.before, Met.UNKNOWN)
-        trail.met[ear] = met
-        triggers |= met == Met.YES
-    return triggers
-
-
-def _compare(judged: Judged, trail: Trail, rows: Indices) -> Mask:
-    triggers = np.zeros(len(rows), dtype=bool)
-    for ear in (0, 1):
-        low, high, base = judged.low[ear], judged.high[ear], trail.base[ear][rows]
-        met = shift_met(low[rows], high[rows], low[base], high[base], judged.limit)
-        if judged.level is not None:
-            met = both_met(met, judged.level[ear][rows])
-        trail.met[ear][rows] = met
-        triggers |= met == Met.YES
-    return triggers
+def _positions(mask: Mask) -> Indices:
+    return np.flatnonzero(mask).astype(np.int32)
 
 
 def _apply(trail: Trail, changes: Changes, from_row: Indices, end: Indices) -> None:

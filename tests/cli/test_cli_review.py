@@ -15,6 +15,7 @@ from audiokit.model.cohort import FileIntake, Settings
 SUMMARY = {
     "people": 401,
     "tests": 1,
+    "tests_left_out": 7,
     "events": {
         "us-osha.sts": {"confirmed": 12, "no_retest": 0, "retest_open": 3},
         "us-osha.recordable": {"confirmed": 0},
@@ -113,13 +114,14 @@ def test_a_step_that_fails_ends_the_review(steps, tmp_path, monkeypatch, capsys,
 def test_summary():
     text = summary_text(SimpleNamespace(settings=SETTINGS, intake=INTAKE), SUMMARY, Path("out"))
     assert text.splitlines() == [
-        "Plant as of 2026-03-01: rulebook us-osha; age correction off; baselines revised by decisions only",
+        "Plant, as of 2026-03-01",
+        "rulebook us-osha; age correction off; baselines revised by decisions only",
         "",
         "  file        rows read  accepted  quarantined",
         "  people.csv        402       401            1",
         "  north.csv       12345     12340            5",
         "",
-        "401 people, 1 test",
+        "401 people, 1 test, 7 more left out: quality.csv says why",
         "",
         "Events",
         "  us-osha.sts: 12 confirmed, 3 retest_open",
@@ -139,7 +141,9 @@ def test_summary_of_nothing():
         settings=Settings("Plant", SETTINGS.as_of, ("a", "b"), True, "automatic"),
         intake=(FileIntake("people.csv", "people", 0, 0, 0),),
     )
-    text = summary_text(cohort, {"people": 0, "tests": 0, "events": {}, "worklist": {}}, Path("out"))
-    assert text.splitlines()[0].endswith("rulebook a, b; age correction on; baselines revised by the published rules")
+    nothing = {"people": 0, "tests": 0, "tests_left_out": 0, "events": {}, "worklist": {}}
+    text = summary_text(cohort, nothing, Path("out"))
+    assert text.splitlines()[1] == "rulebook a, b; age correction on; baselines revised by the published rules"
+    assert "\n0 people, 0 tests\n" in text
     assert "Events\n  none\n" in text and "Worklist\n  nothing to do\n" in text
     assert "could not be used" not in text

@@ -32,7 +32,8 @@ def cohort():
 @pytest.mark.parametrize("file", PLANTED)
 def test_each_cell_fault_is_named_with_its_value(cohort, file):
     quarantine = cohort.quarantine[cohort.quarantine["file"] == file]
-    found = set(zip(quarantine["code"], quarantine["value"], strict=True))
+    # An apostrophe keeps a spreadsheet from taking a value for a formula.
+    found = set(zip(quarantine["code"], quarantine["value"].str.removeprefix("'"), strict=True))
     for fault in PLANTED[file]:
         if fault.code and fault.code != "inconsistent_test":
             assert (fault.code, fault.text) in found, fault

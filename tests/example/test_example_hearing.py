@@ -88,15 +88,15 @@ def test_ages_are_clamped_to_the_limits_of_the_standard(age):
 
 
 def test_two_tests_scatter_as_stated():
-    """6 dB at one frequency and 4.5 dB in the mean of 2000, 3000, 4000 Hz, as the scenario says of itself."""
+    """5.5 dB at one frequency and 4 dB in the mean of 2000, 3000, 4000 Hz, as the scenario says of itself."""
     workforce = _workforce(8000, age=40, noise_years=0)
     person, day = np.arange(8000), np.full(8000, DAY)
     purpose = np.full(8000, Purpose.RETEST)
     one, two = (measure(np.random.default_rng(seed), workforce, person, day, purpose, 0) for seed in (1, 2))
     measured = ((one.response == Response.MEASURED) & (two.response == Response.MEASURED)).all(axis=(1, 2))
     difference = (one.threshold - two.threshold.astype(float))[measured]
-    assert np.abs(difference[:, :, :5].std(axis=(0, 1)) - 6.0).max() < 0.5
-    assert abs(difference[:, :, 2:5].mean(axis=2).std() - 4.5) < 0.3
+    assert np.abs(difference[:, :, :5].std(axis=(0, 1)) - 5.5).max() < 0.4
+    assert abs(difference[:, :, 2:5].mean(axis=2).std() - 4.0) < 0.3
 
 
 def test_readings_are_what_an_audiometer_writes():

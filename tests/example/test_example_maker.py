@@ -123,6 +123,23 @@ def test_a_file_in_the_way_is_left_alone(tmp_path):
     assert (tmp_path / "cohort").read_text() == "mine"
 
 
+def test_an_empty_folder_is_filled_and_nothing_is_left_beside_it(tmp_path):
+    (tmp_path / "cohort").mkdir()
+    make_example(tmp_path / "cohort", people=FEWEST_PEOPLE)
+    assert {path.name for path in (tmp_path / "cohort").iterdir()} == FILES
+    assert [path.name for path in tmp_path.iterdir()] == ["cohort"]
+
+
+def test_a_failure_on_the_way_leaves_nothing(tmp_path, monkeypatch):
+    def full(*_):
+        raise OSError(28, "No space left on device")
+
+    monkeypatch.setattr("audiokit.example.maker.record_decisions", full)
+    with pytest.raises(OutputError, match="No space left"):
+        make_example(tmp_path / "cohort", people=FEWEST_PEOPLE)
+    assert list(tmp_path.iterdir()) == []
+
+
 def test_a_place_that_cannot_be_made_is_an_error_without_traceback(tmp_path):
     (tmp_path / "file").write_text("mine")
     with pytest.raises(OutputError, match="cannot be written"):

@@ -8,49 +8,39 @@ import time
 from pathlib import Path
 
 import pytest
+from kill_steps import killed_before_each_step
 
 from audiokit.io.atomic import replace_folder
 
 pytestmark = pytest.mark.skipif(os.name == "nt", reason="no SIGKILL on Windows")
 
-OWN = frozenset(f"{number}.csv" for number in range(6))
+OWN = frozenset(f"{number}.csv" for number in range(3))
 
-CHILD = """
-import errno, os, signal, sys
+SETUP = """
+import errno, sys
 from pathlib import Path
 from audiokit.io import atomic
 
-target, way, kill_at = Path(sys.argv[1]), sys.argv[2], int(sys.argv[3])
+target, way = Path(sys.argv[1]), sys.argv[2]
+own = frozenset(f"{number}.csv" for number in range(3))
 if way == "two moves":
     def refuse(*_paths):
         raise OSError(errno.EINVAL, "Invalid argument")
     atomic.exchange = refuse
 
-count = 0
-def hook(event, _arguments):
-    global count
-    if event.startswith(("os.", "open", "shutil.", "ctypes.")):
-        count += 1
-        if count == kill_at:
-            os.kill(os.getpid(), signal.SIGKILL)
-
-def fill(folder):
-    for number in range(6):
-        (folder / f"{number}.csv").write_text(content)
-
-own = frozenset(f"{number}.csv" for number in range(6))
-if kill_at:
-    content = "new" * 20_000
-    sys.addaudithook(hook)
+def run(content="new"):
+    def fill(folder):
+        for name in own:
+            (folder / name).write_text(content * 2_000)
     atomic.replace_folder(target, fill, own)
-    kill_at = -1
-else:
-    generation = 0
-    while True:
-        content = f"{os.getpid()} {generation}" * 2_000
-        atomic.replace_folder(target, fill, own)
-        print(generation, flush=True)
-        generation += 1
+"""
+WITHOUT_END = """
+import os
+generation = 0
+while True:
+    run(f"{os.getpid()} {generation},")
+    print(generation, flush=True)
+    generation += 1
 """
 
 
@@ -80,16 +70,11 @@ def test_killed_before_each_step(tmp_path, way):
     put_old(target)
     (target / "notes").write_text("mine")
     seen = []
-    for step in range(1, 300, 2 if way == "exchange" else 1):
-        code = subprocess.run([sys.executable, "-c", CHILD, str(target), way, str(step)]).returncode
+    for _ in killed_before_each_step(SETUP, target, way):
         seen.append(check_after_kill(target, way)[:3])
-        if code == 0:
-            break
-        assert code == -9
         put_old(target)
         assert whole(target) == "old"
         assert [entry.name for entry in tmp_path.iterdir()] == ["out"]
-    assert code == 0
     assert seen.count("old") > 10 and seen.count("new") > 1
     assert seen == sorted(seen, reverse=True)  # Never back to the old one once the new one is there.
 
@@ -100,22 +85,16 @@ def test_killed_at_random_moments(tmp_path, way):
     put_old(target)
     (target / "notes").write_text("mine")
     rng = random.Random(20260301)
-    acknowledged = 0
     for _ in range(12):
-        child = subprocess.Popen(
-            [sys.executable, "-c", CHILD, str(target), way, "0"], stdout=subprocess.PIPE, text=True
-        )
-        child.stdout.readline()
-        time.sleep(rng.random() * 0.1)
-        child.kill()
-        rest, _ = child.communicate()
-        last = int(rest.split("\n")[-2]) if rest.count("\n") else 0
-        acknowledged += last + 1
-        content = check_after_kill(target, way)
-        process, generation = content[: len(content) // 2_000].split()
+        command = [sys.executable, "-c", SETUP + WITHOUT_END, str(target), way]
+        with subprocess.Popen(command, stdout=subprocess.PIPE, text=True) as child:
+            first = child.stdout.readline()
+            time.sleep(rng.random() * 0.1)
+            child.kill()
+            last = int((first + child.stdout.read()).split("\n")[-2])
+        process, generation = check_after_kill(target, way).split(",")[0].split()
         assert int(process) == child.pid
         assert last <= int(generation) <= last + 1
     put_old(target)
     assert whole(target) == "old"
     assert [entry.name for entry in tmp_path.iterdir()] == ["out"]
-    assert acknowledged >= 12

@@ -14,9 +14,9 @@ from tests.oracle.hostile_cells import EarStory
 from tests.oracle.records import EARS, HearingTest, Person, Settings
 
 TRICKY_IDS = (
-    *("10", "9", "007", "7", "1e3", "1.0", "1", "NA", "null", "nan", "None", "True", "-5", "a,b", 'say "x"', "a b"),
+    *("10", "9", "007", "7", "1e3", "1.0", "1", "NA", "null", "nan", "None", "True", "a,b", 'say "x"', "a b"),
     *("Ä1", "ä-2", "é", "e\u0301", "Ω7", "佐藤-3", "أ-5", "Ж", "ß", "ss", "😀", "\uff21", "_", "~", "A", "a", "Z"),
-    *("=1+1", "#8"),
+    "#8",
 )
 TELLING_GAPS = (("months", 12), ("months", 6), ("months", 6), ("almost", 6))
 FIRST_AGES = (16, 18, 19, 22, 40, 45, 50, 54, 57, 59, 61)
@@ -50,7 +50,11 @@ def hostile_cohort(seed: int, people: int = 40, combination: tuple[bool, str, st
     """A cohort of `people`; the same arguments give the same cohort. `combination` is one of COMBINATIONS."""
     rng = random.Random(seed)
     as_of = dt.date(2024, 1, 1) + dt.timedelta(days=rng.randrange(366))
-    limits = {} if rng.random() < 0.5 else {rng.choice((500, 2000, 4000, 8000)): rng.choice((25, 80, 95))}
+    limits = (
+        {}
+        if rng.random() < 0.4
+        else {hz: rng.choice((25, 40, 80, 95)) for hz in rng.sample((500, 2000, 4000, 8000), 3)}
+    )
     age_correction, revision, recording = combination or COMBINATIONS[seed % len(COMBINATIONS)]
     settings = Settings(as_of, age_correction, revision, recording, limits)
     frequencies = [2000, 3000, 4000, *rng.sample((250, 500, 1000, 1500, 6000, 8000, 12500), rng.randint(0, 5))]
@@ -107,6 +111,9 @@ def make_person(
         dates = lay_out(start, gaps)
     person, spelling = make_identity(rng, person_id, start, as_of)
     cohort.sex_spelling[person_id] = spelling
+    if purposes and rng.random() < 0.1:  # leaves on the very day that something is due, or beside it
+        left_on = rng.choice(dates[-3:]) + dt.timedelta(days=rng.choice((7, 21, 37)) + rng.choice((0, 0, 1)))
+        person = replace(person, left_on=left_on)
     stories = {ear: EarStory(rng, cohort.frequencies) for ear in EARS}
     same_clock = rng.random() < 0.6
     tests: list[HearingTest] = []
@@ -116,6 +123,8 @@ def make_person(
         for ear in EARS:
             for frequency, text in stories[ear].next_cells(allowances, purpose in ("retest", "")).items():
                 cells[ear, frequency] = text
+        if tests and rng.random() < (0.1 if purpose == "retest" else 0.01):  # nothing could be tested
+            cells = dict.fromkeys(cells, "CNT")
         clock = None if same_clock or rng.random() < 0.5 else dt.time(rng.randrange(24), rng.choice((0, 30)))
         valid = rng.random() > 0.05
         tests.append(HearingTest(test_ids.pop(), person_id, day, cells, purpose, valid, clock))

@@ -29,6 +29,9 @@ TELLING_SUMS = (
 )
 TELLING_LEVELS = (750, 750, 749, 751, 740, 700, 800)  # sums that give a mean of 25 dB HL and its neighbours
 START_SUMS = (450, 450, 450, 440, 400, 350, 300, 150, 600, 900)
+# Sums of successive periodic tests: a shift below 25 dB HL that lasts (the baseline may be revised), then a level of
+# 25 dB that is a shift of 10 dB from the first baseline only, then one from the revised baseline too.
+CREEPING = (300, 620, 620, 750, 749, 750, 930)
 NO_RESPONSE_LEVELS = (90, 95, 100, 25, 30, 20, 45)
 
 
@@ -64,6 +67,7 @@ class EarStory:
     def __init__(self, rng: random.Random, frequencies: list[int]):
         self.rng = rng
         self.others = [frequency for frequency in frequencies if frequency not in MEAN_FREQUENCIES]
+        self.script = list(CREEPING) if rng.random() < 0.2 else []
         self.levels: list[list[int]] = []  # per test, tenths at 2, 3, 4 kHz
         self.other_cells = {hz: rng.choice(("10", "15", "20", "NR", "NR@90", "")) for hz in self.others}
         self.missing_rate = rng.choice((0.0,) * 12 + (0.02, 0.02, 0.02, 0.1))
@@ -89,6 +93,8 @@ class EarStory:
 
     def next_levels(self, allowances: list[int], looks_like_retest: bool) -> list[int]:
         rng = self.rng
+        if self.script and not looks_like_retest:
+            return split_even(rng, self.script.pop(0))
         if not self.levels:
             return split_even(rng, rng.choice(START_SUMS))
         if rng.random() < (0.5 if looks_like_retest else 0.45):  # stays as it was: same sum, or a trifle off
@@ -113,6 +119,9 @@ class EarStory:
             self.other_cells[frequency] = str(min(max(int(before) + rng.choice((-5, -5, 5, 5, -5)), -10), 100))
         else:
             self.other_cells[frequency] = rng.choice(("NR@90", "90+", ">85", "NR", "90", "85", "10", "7.5", "", "DNT"))
+        if rng.random() < 0.1:  # one better, one fallen silent: worse on the whole
+            better, silent = rng.choice(self.others), rng.choice(self.others)
+            self.other_cells[better], self.other_cells[silent] = "-5", rng.choice(("NR@95", "NR"))
 
 
 def split_even(rng: random.Random, total: int) -> list[int]:
