@@ -17,7 +17,7 @@ BROKEN_PIPE = 141
 INTERRUPTED = 130
 """128 + SIGINT (common practice, no source)"""
 
-_SUBCOMMANDS = ("review", "decide", "example")
+_SUBCOMMANDS = ("review", "decide", "example", "open")
 """Modules of audiokit.cli; each has register(subparsers), and sets `run`, from arguments to exit code, as a default."""
 
 

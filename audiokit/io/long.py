@@ -96,6 +96,10 @@ def _first_rows(test: Rows, rows: Rows) -> Rows:
     return first
 
 
+def _hours(shared: Sequence[SharedColumns]) -> NDArray[np.float64]:
+    return np.concatenate([np.full(len(s), np.nan) if s.hours is None else s.hours for s in shared])
+
+
 def _check_constant(stack: Stack, shared: Sequence[SharedColumns], test: Rows) -> None:
     """Note every test whose optional columns are not the same in all its rows."""
     rows = np.flatnonzero(test != _NO_TEST)
@@ -105,6 +109,8 @@ def _check_constant(stack: Stack, shared: Sequence[SharedColumns], test: Rows) -
             continue
         if name in ("purpose", "valid"):
             values = np.concatenate([getattr(s, name) for s in shared])
+        elif name == "hours_since_noise":
+            values = np.nan_to_num(_hours(shared), nan=-1.0)
         else:
             values = stack.codes(name)
         differs = values[rows] != values[first[test[rows]]]
@@ -163,10 +169,6 @@ def long_batch(tests: LongTests) -> TestBatch:
         threshold[at] = cells.level
         response[at] = cells.response
 
-    hours = None
-    if any(s.hours is not None for s in tests.shared):
-        parts = [np.full(len(s), np.nan) if s.hours is None else s.hours for s in tests.shared]
-        hours = np.concatenate(parts)[first]
     tables = tests.stack.tables
     which = np.searchsorted(tests.stack.first, first, side="right") - 1
     names = [name for name in (*TEXT_DETAILS, *RECHECK_COLUMNS) if any(table.has(name) for table in tables)]
@@ -183,5 +185,5 @@ def long_batch(tests: LongTests) -> TestBatch:
         frequencies_hz=tuple(np.unique(cells.frequency_hz).tolist()),
         fill=fill,
         texts={name: _texts(tests, name, first) for name in names},
-        hours=hours,
+        hours=_hours(tests.shared)[first] if any(s.hours is not None for s in tests.shared) else None,
     )

@@ -1,20 +1,18 @@
 """Writes a review as a folder of files that appears whole or not at all."""
 
 import dataclasses
-import io
 import json
+from collections import deque
 from collections.abc import Callable, Iterator
 from concurrent.futures import ThreadPoolExecutor
 from pathlib import Path
 
-import numpy as np
 import pandas as pd
 import pyarrow as pa
 import pyarrow.csv
-from numpy.typing import NDArray
 
 from audiokit.io.atomic import replace_folder
-from audiokit.reports.shifts import output_order, shifts_table
+from audiokit.reports.shifts import HEADER, output_order, shift_blocks, shift_lines
 from audiokit.reports.summary import summary_page
 from audiokit.reports.tables import baselines_table, events_table
 from audiokit.surveillance.quality import quality_table
@@ -32,9 +30,6 @@ FILES = frozenset(
         "summary.html",
     }
 )
-
-BLOCK_TESTS = 1 << 15
-"""Tests whose rows are made and written at a time: bounds the memory, and gives the threads their unit."""
 
 
 def write_review(review: Review, out: str | Path, progress: Progress | None = None) -> None:
@@ -79,31 +74,20 @@ def _write_table(table: pa.Table, path: Path) -> None:
 
 
 def _write_shifts(review: Review, path: Path, progress: Progress | None) -> None:
-    order = output_order(review)
-    order = order[~review.history.before[order]]
-    blocks = [order[start : start + BLOCK_TESTS] for start in range(0, len(order), BLOCK_TESTS)] or [order]
-
-    def make(tests: NDArray[np.integer], header: bool) -> bytes:
-        buffer = io.BytesIO()
-        options = pyarrow.csv.WriteOptions(include_header=header)
-        pyarrow.csv.write_csv(shifts_table(review, tests), buffer, options)
-        return buffer.getvalue()
-
+    order, blocks = output_order(review), shift_blocks(review)
     with path.open("wb") as file:
-        for number, text in enumerate(_in_order(make, blocks), start=1):
-            file.write(text)
+        file.write(HEADER)
+        for number, lines in enumerate(_in_order(lambda block: shift_lines(review, order, block), blocks), start=1):
+            file.write(lines)
             if progress is not None:
                 progress("writing shifts", number, len(blocks))
 
 
-def _in_order(
-    make: Callable[[NDArray[np.integer], bool], bytes], blocks: list[NDArray[np.integer]], workers: int = 2
-) -> Iterator[bytes]:
+def _in_order(make: Callable[[slice], memoryview], blocks: list[slice], workers: int = 2) -> Iterator[memoryview]:
     """Results of `make` in order, only a few blocks ahead of the writer, so that memory stays flat."""
     with ThreadPoolExecutor(max_workers=workers) as pool:
-        ahead = [pool.submit(make, block, number == 0) for number, block in enumerate(blocks[: workers + 1])]
-        for number in range(len(blocks)):
-            yield ahead.pop(0).result()
-            following = number + workers + 1
-            if following < len(blocks):
-                ahead.append(pool.submit(make, blocks[following], False))
+        ahead = deque(pool.submit(make, block) for block in blocks[: workers + 1])
+        for following in [*blocks[workers + 1 :], *[None] * min(len(blocks), workers + 1)]:
+            yield ahead.popleft().result()
+            if following is not None:
+                ahead.append(pool.submit(make, following))

@@ -7,8 +7,8 @@ import pyarrow as pa
 from audiokit.core.dates import NO_DATE
 from audiokit.core.vocabulary import EARS
 from audiokit.measures.sums import MISSING
-from audiokit.reports.shifts import Rows, numbers_of
-from audiokit.reports.wording import blank_where, choose, date_texts, join, lookup, quotient_text
+from audiokit.reports.numbers import Rows, numbers_of, quotient_text
+from audiokit.reports.text_rows import blank_where, choose, date_texts, lookup, side_by_side
 from audiokit.surveillance.baselines import PROPOSED, STATUSES
 from audiokit.surveillance.events import FOUND_AT_RETEST, NO_RETEST, NOT_CONFIRMED, OUTCOMES, RETEST_OPEN
 from audiokit.surveillance.review import BookReview, Review
@@ -76,24 +76,26 @@ def _event_words(review: Review, book: BookReview, name: str) -> pa.Array:
     day, window = review.grid.day, criterion.retest_window_days
     days_after = day[events.deciding] - day[events.slot]
     found = events.outcome == FOUND_AT_RETEST
-    first = join(
+    first = side_by_side(
+        [
         f"{criterion.shift_at_least_db.at}: ",
         pa.compute.if_else(pa.array(found), pa.scalar("not met"), pa.scalar("met")),
         " at test ",
         review.grid.test_id.take(pa.array(events.slot)),
         " of ",
         date_texts(day[events.slot]),
-    )
+    ])
     said = {NOT_CONFIRMED: ": not met there, not confirmed", FOUND_AT_RETEST: ": met there, found at the retest"}
     verdicts = [said.get(code, ": met there, confirmed") for code in range(len(OUTCOMES))]
-    retest = join(
+    retest = side_by_side(
+        [
         "; deciding retest ",
         review.grid.test_id.take(pa.array(events.deciding)),
         lookup(lambda days: f" on day {days} of {window.value} ({window.at})", days_after),
         choose(verdicts, events.outcome),
-    )
+    ])
     open_ = choose([_OUTCOME_WORDS.get(code, "") for code in range(len(OUTCOMES))], events.outcome)
-    return join(first, pa.compute.if_else(pa.array(events.decided), retest, open_))
+    return side_by_side([first, pa.compute.if_else(pa.array(events.decided), retest, open_)])
 
 
 def baselines_table(review: Review) -> pa.Table:
@@ -145,7 +147,8 @@ def _baseline_words(review: Review, book: BookReview) -> pa.Array:
         sums.total[kept.ear, kept.test],
     )
     known = sums.flags[kept.ear, kept.test] == 0
-    return join(
+    return side_by_side(
+        [
         lead,
         grid.test_id.take(pa.array(named)),
         pa.compute.if_else(pa.array(known), mean, pa.scalar("; no exact mean hearing threshold level")),

@@ -1,5 +1,6 @@
 """The compact arrays that one criterion is judged on, for a stretch of people that is small enough for the cache."""
 
+import itertools
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -99,3 +100,13 @@ def history_of(grid: ThresholdGrid) -> History:
         linkable[grid.first[:-1][np.diff(grid.first) > 0]] = False
     before = index <= initial[grid.person] if people else np.zeros(0, dtype=bool)
     return History(grid.person, grid.first, grid.day, initial, before, linkable)
+
+
+def stretches(first: NDArray[np.int64], tests: int) -> list[slice]:
+    """Consecutive people, cut so that each stretch holds about so many tests, always at least one person."""
+    people = len(first) - 1
+    cuts = [0]
+    while cuts[-1] < people:
+        target = first[cuts[-1]] + tests
+        cuts.append(min(people, max(cuts[-1] + 1, int(np.searchsorted(first, target, side="right")) - 1)))
+    return [slice(a, b) for a, b in itertools.pairwise(cuts)]

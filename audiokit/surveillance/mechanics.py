@@ -1,6 +1,5 @@
 """A rulebook's criteria over all people: arrays in; baselines, verdicts and proposals out, block by block."""
 
-import itertools
 from collections.abc import Callable
 from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass
@@ -10,7 +9,7 @@ from numpy.typing import NDArray
 
 from audiokit.core.vocabulary import Met
 from audiokit.rules.spec import Criterion, Rulebook
-from audiokit.surveillance.block import History, Judged
+from audiokit.surveillance.block import History, Judged, stretches
 from audiokit.surveillance.finders import BaselineDecisions, by_decision, by_event, by_persistence, revision_hits
 from audiokit.surveillance.revision import OtherFrequencies, choose
 from audiokit.surveillance.walk import Changes, Round, Trail, candidates, walk, walk_fixed
@@ -59,7 +58,7 @@ def run_mechanics(
 
     judged : by criterion id, what each compares      other : the frequencies outside the revision criterion's own
     """
-    stretches = _stretches(history.first)
+    parts_of_people = stretches(history.first, BLOCK_TESTS)
     trails = {criterion.id: Trail.empty(len(history)) for criterion in rulebook.criteria}
 
     def work(people: slice) -> dict[str, tuple[Changes, Changes]]:
@@ -67,7 +66,9 @@ def run_mechanics(
 
     parts: list[dict[str, tuple[Changes, Changes]]] = []
     with ThreadPoolExecutor(max_workers=plan.workers) as pool:
-        for number, (people, made) in enumerate(zip(stretches, pool.map(work, stretches), strict=True), start=1):
+        for number, (people, made) in enumerate(
+            zip(parts_of_people, pool.map(work, parts_of_people), strict=True), start=1
+        ):
             offset = int(history.first[people.start])
             parts.append(
                 {
@@ -76,7 +77,7 @@ def run_mechanics(
                 }
             )
             if progress is not None:
-                progress("judging", number, len(stretches))
+                progress("judging", number, len(parts_of_people))
     findings = {}
     for criterion in rulebook.criteria:
         trail = trails[criterion.id]
@@ -84,16 +85,6 @@ def run_mechanics(
         proposals = Changes.join([part[criterion.id][1] for part in parts])
         findings[criterion.id] = Findings(criterion, judged[criterion.id], trail, proposals)
     return findings
-
-
-def _stretches(first: NDArray[np.int64]) -> list[slice]:
-    """Consecutive people, cut so that each stretch holds about BLOCK_TESTS tests."""
-    people = len(first) - 1
-    cuts = [0]
-    while cuts[-1] < people:
-        target = first[cuts[-1]] + BLOCK_TESTS
-        cuts.append(min(people, max(cuts[-1] + 1, int(np.searchsorted(first, target, side="right")) - 1)))
-    return [slice(a, b) for a, b in itertools.pairwise(cuts)]
 
 
 def _block(

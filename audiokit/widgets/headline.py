@@ -2,7 +2,7 @@
 
 from audiokit.reports.summary import worklist_figures, yearly_figures
 from audiokit.surveillance.review import Review
-from audiokit.widgets.look import count, tiles, words
+from audiokit.widgets.look import count, facts, tiles, words
 
 _SHORT_LINE = ("retest", "notify", "record")
 
@@ -15,7 +15,7 @@ def headline(review: Review) -> str:
     read = sum(file.rows_read for file in review.cohort.intake)
     unused = sum(file.quarantined for file in review.cohort.intake)
     left_out = int((review.left_out != "").sum())
-    return tiles(
+    return _settings(review) + tiles(
         (
             ("Overdue", count(overdue), f"of {count(lines)} lines of the worklist"),
             (
@@ -36,6 +36,24 @@ def headline(review: Review) -> str:
                 f"{count(len(review.grid))} tests, {count(left_out)} left out",
             ),
         )
+    )
+
+
+def _settings(review: Review) -> str:
+    """What the answers below rest on, whatever the fields above say by now."""
+    settings = review.cohort.settings
+    return facts(
+        {
+            "cohort": settings.name,
+            "as of": settings.as_of.isoformat(),
+            "rulebook": ", ".join(settings.rulebooks),
+            "age correction": "on" if settings.age_correction else "off",
+            "baselines revised": {
+                "reviewed": "by reviewers' decisions",
+                "automatic": "by the published rules",
+            }[settings.baseline_revision],
+            "recording baseline": words(settings.recording_baseline),
+        }
     )
 
 

@@ -94,7 +94,7 @@ class LoadPanel(widgets.VBox):
         else:
             self._progress("drawing", 95)
             self._on_loaded(found)
-            self.tell(_loaded_words(found))
+            self.tell(f"Loaded: {found.cohort.settings.name}.")
         finally:
             self.button.disabled = False
             self.bar.layout.display = "none"
@@ -126,11 +126,3 @@ class LoadPanel(widgets.VBox):
     def _show_other(self) -> None:
         self.other.layout.display = "none" if self.folder.value else ""
 
-
-def _loaded_words(found: Review) -> str:
-    settings = found.cohort.settings
-    revised = "by reviewers' decisions" if settings.baseline_revision == "reviewed" else "by the published rules"
-    return (
-        f"{settings.name}: as of {settings.as_of}, rulebook {', '.join(settings.rulebooks)}, "
-        f"age correction {'on' if settings.age_correction else 'off'}, baselines revised {revised}."
-    )

@@ -79,7 +79,7 @@ class PersonPanel(widgets.VBox):
         self.told.value = status("Click a line of the worklist, press Enter on it, or type a person's id.")
 
     def show(self, person_id: str, test_id: str = "", criterion: str = "", *, reveal: bool = False) -> bool:
-        """Show a person; says so and changes nothing else where there is none of that id.
+        """Show a person; says so and shows nobody where there is none of that id.
 
         test_id   : the test shown as current; blank: the latest one that takes part
         criterion : whose arithmetic is shown; blank: the first of the rulebook
@@ -87,6 +87,7 @@ class PersonPanel(widgets.VBox):
         assert self._lookup is not None
         row = self._lookup.person_row(person_id)
         if row < 0:
+            self.clear(self._lookup)
             self.told.value = status(*self._unknown(person_id), kind="error")
             return False
         self._person, self._tests = person_id, self._lookup.tests(row)

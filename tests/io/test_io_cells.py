@@ -108,4 +108,11 @@ def test_numbers_and_frequencies():
     found = parse_numbers(["14", "0.5", "-1", "x", "", "1,5"], False)
     assert found[:2].tolist() == [14, 0.5] and all(math.isnan(n) for n in found[2:])
     assert parse_numbers(["1,5"], True).tolist() == [1.5]
-    assert parse_frequencies(["1000", "1000.0", "900", "1k", "", "16000"], False).tolist() == [1000, 1000, 0, 0, 0, 16000]
+    assert parse_frequencies(["1000", "1000.0", "900", "1k", "", "16000"], False).tolist() == [
+        1000,
+        1000,
+        0,
+        0,
+        0,
+        16000,
+    ]

@@ -34,7 +34,9 @@ RECORDS = st.lists(st.lists(st.one_of(PLAIN, CELLS.map(quoted)), min_size=1, max
 
 
 @settings(max_examples=300, deadline=None)
-@given(records=RECORDS, end=st.sampled_from(["\n", "\r\n", "\r"]), last=st.booleans(), block=st.sampled_from([1, 2, 7, 64]))
+@given(
+    records=RECORDS, end=st.sampled_from(["\n", "\r\n", "\r"]), last=st.booleans(), block=st.sampled_from([1, 2, 7, 64])
+)
 def test_lines_and_cells_agree_with_the_standard_reader(records, end, last, block):
     text = end.join(",".join(record) for record in records) + (end if last else "")
     data = np.frombuffer(text.encode(), np.uint8)

@@ -21,7 +21,9 @@ def parse(text: str, order: str | None = None) -> tuple[int, int] | str:
     return int(parsed.day[0]), int(parsed.stamp[0])
 
 
-@given(moment=st.datetimes(datetime.datetime(1900, 1, 1), datetime.datetime(2200, 12, 31)), separator=st.sampled_from("T "))
+@given(
+    moment=st.datetimes(datetime.datetime(1900, 1, 1), datetime.datetime(2200, 12, 31)), separator=st.sampled_from("T ")
+)
 def test_every_moment_is_read_as_written(moment, separator):
     day = to_days(moment.date())
     seconds = (moment - datetime.datetime.combine(moment.date(), datetime.time())) // datetime.timedelta(microseconds=1)
@@ -37,7 +39,11 @@ def test_a_date_is_read_just_where_the_calendar_has_it(year, month, day):
         expected = None
     found = parse(f"{year:04d}-{month:02d}-{day:02d}")
     assert found == ((expected, expected * NANOSECONDS) if expected is not None else "impossible_date")
-    for order, text in (("dmy", f"{day}/{month}/{year}"), ("mdy", f"{month:02d}.{day:02d}.{year}"), ("ymd", f"{year}/{month}/{day}")):
+    for order, text in (
+        ("dmy", f"{day}/{month}/{year}"),
+        ("mdy", f"{month:02d}.{day:02d}.{year}"),
+        ("ymd", f"{year}/{month}/{day}"),
+    ):
         assert parse(text, order) == found
         assert parse(text) == "unreadable_date"
 

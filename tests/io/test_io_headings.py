@@ -19,7 +19,10 @@ def refuse(tmp_path, words: list[str], **files: str | bytes) -> None:
 @pytest.mark.parametrize(
     ("tests", "words"),
     [
-        ("Emp No,tested_on,right_1000\n1,2,3\n", ["column person_id is missing", "[columns.tests]", "Emp No, tested_on"]),
+        (
+            "Emp No,tested_on,right_1000\n1,2,3\n",
+            ["column person_id is missing", "[columns.tests]", "Emp No, tested_on"],
+        ),
         ("persn_id,tested_on,right_1000\n1,2,3\n", ["person_id may be the column 'persn_id'"]),
         ("person_id,right_1000\n1,2\n", ["column tested_on is missing"]),
         ("a,right_1000\n1,2\n", ["column person_id and tested_on is missing"]),
@@ -53,7 +56,10 @@ def test_people_tables_that_cannot_be_read(tmp_path, people, words):
 @pytest.mark.parametrize(
     ("setting", "words"),
     [
-        ('[columns.tests]\nperson_id = "Emp No"', ["heading 'Emp No'", "[columns.tests]", "person_id, tested_on, right_1000"]),
+        (
+            '[columns.tests]\nperson_id = "Emp No"',
+            ["heading 'Emp No'", "[columns.tests]", "person_id, tested_on, right_1000"],
+        ),
         ('[columns.tests]\nperson_id = "Person_id"', ["the nearest is 'person_id'"]),
         ('[columns.tests]\nremarks = "tested_on"', []),
         ('[columns.tests]\ntester = "right_1000"\nremarks = "right_1000"', ["two columns"]),

@@ -48,7 +48,10 @@ MIDNIGHT = datetime.datetime(2024, 1, 5)
 def test_types_become_canonical_text(column, texts):
     raw = read_parquet(stored(a=column), "t.parquet")
     assert raw.encoded("a").texts(raw=True).to_pylist() == texts
-    assert read_parquet(stored(a=column), "t.parquet", all_different=["a"]).encoded("a").texts(raw=True).to_pylist() == texts
+    assert (
+        read_parquet(stored(a=column), "t.parquet", all_different=["a"]).encoded("a").texts(raw=True).to_pylist()
+        == texts
+    )
     assert raw.rows.tolist() == [2, 3, 4]
 
 

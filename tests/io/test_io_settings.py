@@ -161,7 +161,10 @@ def test_a_source_may_describe_the_people(tmp_path):
         ("source = [3]", ["source", "list of tables"]),
         ("[[source]]\ndelimiter = ';'", ["[[source]]", "names no file"]),
         ("[[source]]\ntests = 'a.csv'\npeople = 'b.csv'", ["[[source]]", "names people and tests"]),
-        ("[[source]]\ntests = 'tests.csv'\n[[source]]\ntests = 'tests.csv'", ["two [[source]] tables describe tests.csv"]),
+        (
+            "[[source]]\ntests = 'tests.csv'\n[[source]]\ntests = 'tests.csv'",
+            ["two [[source]] tables describe tests.csv"],
+        ),
         ("[files]\ntests = ['tests.csv', 'tests.csv']", ["a file is named twice"]),
         ("name = 'a'\nname = 'b'", ["cohort.toml", "line 2"]),
         ("name = unquoted", ["cohort.toml", "line 1"]),

@@ -13,7 +13,7 @@ PEOPLE = "person_id,sex,birth_date,birth_year\nP1,f,1980-01-01,\nP2,m,,1975\nP3,
 HEAD = "person_id,tested_on,purpose,right_1000,left_1000\n"
 
 
-def tests(tmp_path, rows: str, head: str = HEAD, toml: str = ""):
+def with_tests(tmp_path, rows: str, head: str = HEAD, toml: str = ""):
     return read(write(tmp_path, people_csv=PEOPLE, tests_csv=head + rows, cohort_toml=toml))
 
 
@@ -22,8 +22,10 @@ def day(year: int, month: int, date: int) -> int:
 
 
 def test_the_grid_of_a_small_file(tmp_path):
-    rows = "P2,2021-03-01,Annual,15,NR@90\nP1,2020-01-01,baseline,-5,DNT\nP2,2020-03-01,,7.5,CNT\nP1,2030-01-01,exit,NR,\n"
-    grid = tests(tmp_path, rows).grid
+    rows = (
+        "P2,2021-03-01,Annual,15,NR@90\nP1,2020-01-01,baseline,-5,DNT\nP2,2020-03-01,,7.5,CNT\nP1,2030-01-01,exit,NR,\n"
+    )
+    grid = with_tests(tmp_path, rows).grid
     assert grid.person.tolist() == [0, 0, 1, 1]
     assert grid.first.tolist() == [0, 2, 4, 4]
     assert grid.day.tolist() == [day(2020, 1, 1), day(2030, 1, 1), day(2020, 3, 1), day(2021, 3, 1)]
@@ -39,8 +41,10 @@ def test_the_grid_of_a_small_file(tmp_path):
 
 
 def test_types_of_the_arrays(tmp_path):
-    grid = tests(tmp_path, "P1,2020-01-01,,1,2\n").grid
-    found = [a.dtype for a in (grid.person, grid.first, grid.day, grid.purpose, grid.valid, grid.threshold, grid.response)]
+    grid = with_tests(tmp_path, "P1,2020-01-01,,1,2\n").grid
+    found = [
+        a.dtype for a in (grid.person, grid.first, grid.day, grid.purpose, grid.valid, grid.threshold, grid.response)
+    ]
     assert found == [np.int32, np.int64, np.int32, np.int8, np.bool_, np.int16, np.int8]
 
 
@@ -70,7 +74,7 @@ def test_types_of_the_arrays(tmp_path):
     ],
 )  # fmt: skip
 def test_faulty_rows(tmp_path, rows, expected):
-    cohort = tests(tmp_path, rows)
+    cohort = with_tests(tmp_path, rows)
     assert problems(cohort, "tests.csv") == expected
     read_rows, accepted, quarantined = counts(cohort)["tests.csv"]
     assert read_rows == accepted + quarantined == rows.count("\n")
@@ -79,8 +83,7 @@ def test_faulty_rows(tmp_path, rows, expected):
 
 
 def test_an_unknown_person_whose_own_row_was_quarantined_is_said_so(tmp_path):
-    cohort = tests(tmp_path, "P9,2020-01-01,,1,2\nP4,2020-01-01,,1,2\n")
-    found = cohort.quarantine.set_index("row")["problem"]
+    cohort = with_tests(tmp_path, "P9,2020-01-01,,1,2\nP4,2020-01-01,,1,2\n")
     found = cohort.quarantine[cohort.quarantine["code"] == "unknown_person"]["problem"].tolist()
     assert '"P9" is not in the people table' in found[0]
     assert '"P4" stands only in quarantined rows of the people table' in found[1]
@@ -91,7 +94,7 @@ OPTIONAL = "person_id,tested_on,purpose,right_1000,left_1000,test_id,valid,hours
 
 def test_optional_columns(tmp_path):
     rows = "P1,2020-01-01,,1,2,T2,No,14.5,loud,NR@90,soon\nP1,2019-01-01,,1,2,T1,,,,,\n"
-    cohort = tests(tmp_path, rows, OPTIONAL)
+    cohort = with_tests(tmp_path, rows, OPTIONAL)
     grid = cohort.grid
     assert problems(cohort, "tests.csv") == []
     assert grid.test_id.to_pylist() == ["T1", "T2"] and grid.valid.tolist() == [True, False]
@@ -118,7 +121,7 @@ def test_optional_columns(tmp_path):
     ],
 )  # fmt: skip
 def test_faulty_optional_columns(tmp_path, rows, expected):
-    assert problems(tests(tmp_path, rows, OPTIONAL), "tests.csv") == expected
+    assert problems(with_tests(tmp_path, rows, OPTIONAL), "tests.csv") == expected
 
 
 def test_tests_are_ordered_by_time_then_by_input(tmp_path):
@@ -126,7 +129,7 @@ def test_tests_are_ordered_by_time_then_by_input(tmp_path):
         "P1,2020-01-01T09:00,,1,\nP1,2020-01-01,,2,\nP1,2020-01-01 08:59:59.5,,3,\nP1,2020-01-01T00:00,,4,\n"
         "P1,2020-01-01T08:59:59.25,,5,\n"
     )
-    grid = tests(tmp_path, rows).grid
+    grid = with_tests(tmp_path, rows).grid
     assert (grid.threshold[0, 0] // 10).tolist() == [2, 4, 5, 3, 1]
     assert set(grid.day.tolist()) == {day(2020, 1, 1)}
     assert grid.test_id.to_pylist() == [f"P1@2020-01-01{end}" for end in ("", "#2", "#3", "#4", "#5")]
@@ -136,7 +139,7 @@ def test_made_ids_never_meet_given_ones(tmp_path):
     head = "person_id,tested_on,right_1000,test_id\n"
     rows = "P1,2020-01-01,1,\nP1,2020-01-01,2,\nP2,2020-01-01,3,P1@2020-01-01\nP2,2020-01-01,4,P1@2020-01-01~\n"
     rows += "P2,2020-01-01,5,P1@2020-01-01#2\n"
-    grid = tests(tmp_path, rows, head).grid
+    grid = with_tests(tmp_path, rows, head).grid
     assert grid.test_id.to_pylist()[:2] == ["P1@2020-01-01~~", "P1@2020-01-01#2~"]
     assert len(set(grid.test_id.to_pylist())) == 5
 
@@ -163,33 +166,45 @@ def test_rows_of_several_files_are_compared_and_follow_the_order_of_the_list(tmp
 def test_no_response_codes_take_the_limit_of_their_frequency(tmp_path):
     head = "person_id,tested_on,right_250,right_500,right_1000,left_8000\n"
     toml = '[cells]\nno_response = ["999"]\n[response_limits]\n500 = 80\n'
-    grid = tests(tmp_path, "P1,2020-01-01,999,NR,999,999\n", head, toml).grid
+    grid = with_tests(tmp_path, "P1,2020-01-01,999,NR,999,999\n", head, toml).grid
     assert grid.frequencies_hz == (250, 500, 1000, 8000)
     assert grid.threshold[0, :3, 0].tolist() == [900, 800, 1000] and grid.threshold[1, 3, 0] == 900
 
 
 def test_dates_in_another_order_by_setting(tmp_path):
     rows = "P1,03/02/2020,,1,2\nP1,2020-02-04,,1,2\n"
-    assert tests(tmp_path / "a", rows, toml='date_order = "dmy"').grid.day.tolist() == [day(2020, 2, 3), day(2020, 2, 4)]
-    assert tests(tmp_path / "b", rows, toml='date_order = "mdy"').grid.day.tolist() == [day(2020, 2, 4), day(2020, 3, 2)]
-    assert problems(tests(tmp_path / "c", rows), "tests.csv") == [[2, "tested_on", "unreadable_date"]]
+    assert with_tests(tmp_path / "a", rows, toml='date_order = "dmy"').grid.day.tolist() == [
+        day(2020, 2, 3),
+        day(2020, 2, 4),
+    ]
+    assert with_tests(tmp_path / "b", rows, toml='date_order = "mdy"').grid.day.tolist() == [
+        day(2020, 2, 4),
+        day(2020, 3, 2),
+    ]
+    assert problems(with_tests(tmp_path / "c", rows), "tests.csv") == [[2, "tested_on", "unreadable_date"]]
 
 
 def test_semicolons_and_decimal_commas_by_setting(tmp_path):
     rows = "P1;2020-01-01;annual;7,5;NR@92,5\n"
     toml = 'delimiter = ";"\ndecimal_comma = true\n[[source]]\npeople = "people.csv"\ndelimiter = ","\n'
-    grid = tests(tmp_path, rows, HEAD.replace(",", ";"), toml).grid
+    grid = with_tests(tmp_path, rows, HEAD.replace(",", ";"), toml).grid
     assert grid.threshold[:, 0, 0].tolist() == [75, 925]
 
 
 def test_all_rows_quarantined_gives_an_empty_grid(tmp_path):
-    grid = tests(tmp_path, "P1,x,,1,2\n").grid
+    grid = with_tests(tmp_path, "P1,x,,1,2\n").grid
     assert len(grid) == 0 and grid.threshold.shape == (2, 1, 0) and grid.first.tolist() == [0, 0, 0, 0]
 
 
 def test_order_of_rows_and_people_does_not_matter(tmp_path):
     rng = np.random.default_rng(5)
-    rows = [f"P{p},20{y:02d}-0{m}-01T0{h}:00,annual,{p + y},{m}\n" for p in (1, 2, 3) for y in (10, 11) for m in (1, 2) for h in (1, 2)]
-    first = tests(tmp_path / "a", "".join(rows))
-    shuffled = tests(tmp_path / "b", "".join(rng.permutation(rows)))
+    rows = [
+        f"P{p},20{y:02d}-0{m}-01T0{h}:00,annual,{p + y},{m}\n"
+        for p in (1, 2, 3)
+        for y in (10, 11)
+        for m in (1, 2)
+        for h in (1, 2)
+    ]
+    first = with_tests(tmp_path / "a", "".join(rows))
+    shuffled = with_tests(tmp_path / "b", "".join(rng.permutation(rows)))
     assert grid_rows(first) == grid_rows(shuffled)
