@@ -78,22 +78,24 @@ def _event_words(review: Review, book: BookReview, name: str) -> pa.Array:
     found = events.outcome == FOUND_AT_RETEST
     first = side_by_side(
         [
-        f"{criterion.shift_at_least_db.at}: ",
-        pa.compute.if_else(pa.array(found), pa.scalar("not met"), pa.scalar("met")),
-        " at test ",
-        review.grid.test_id.take(pa.array(events.slot)),
-        " of ",
-        date_texts(day[events.slot]),
-    ])
+            f"{criterion.shift_at_least_db.at}: ",
+            pa.compute.if_else(pa.array(found), pa.scalar("not met"), pa.scalar("met")),
+            " at test ",
+            review.grid.test_id.take(pa.array(events.slot)),
+            " of ",
+            date_texts(day[events.slot]),
+        ]
+    )
     said = {NOT_CONFIRMED: ": not met there, not confirmed", FOUND_AT_RETEST: ": met there, found at the retest"}
     verdicts = [said.get(code, ": met there, confirmed") for code in range(len(OUTCOMES))]
     retest = side_by_side(
         [
-        "; deciding retest ",
-        review.grid.test_id.take(pa.array(events.deciding)),
-        lookup(lambda days: f" on day {days} of {window.value} ({window.at})", days_after),
-        choose(verdicts, events.outcome),
-    ])
+            "; deciding retest ",
+            review.grid.test_id.take(pa.array(events.deciding)),
+            lookup(lambda days: f" on day {days} of {window.value} ({window.at})", days_after),
+            choose(verdicts, events.outcome),
+        ]
+    )
     open_ = choose([_OUTCOME_WORDS.get(code, "") for code in range(len(OUTCOMES))], events.outcome)
     return side_by_side([first, pa.compute.if_else(pa.array(events.decided), retest, open_)])
 
@@ -149,12 +151,13 @@ def _baseline_words(review: Review, book: BookReview) -> pa.Array:
     known = sums.flags[kept.ear, kept.test] == 0
     return side_by_side(
         [
-        lead,
-        grid.test_id.take(pa.array(named)),
-        pa.compute.if_else(pa.array(known), mean, pa.scalar("; no exact mean hearing threshold level")),
-        pa.compute.if_else(
-            pa.array(kept.status == PROPOSED), pa.scalar("; a licensed reviewer decides"), pa.scalar("")
-        ),
+            lead,
+            grid.test_id.take(pa.array(named)),
+            pa.compute.if_else(pa.array(known), mean, pa.scalar("; no exact mean hearing threshold level")),
+            pa.compute.if_else(
+                pa.array(kept.status == PROPOSED), pa.scalar("; a licensed reviewer decides"), pa.scalar("")
+            ),
+        ]
     )
 
 

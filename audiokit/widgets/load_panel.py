@@ -41,11 +41,11 @@ class LoadPanel(widgets.VBox):
         )
         self.as_of = widgets.DatePicker(description="As of", style=_OWN_WIDTH)
         self.age_correction = widgets.Dropdown(
-            options=[(_FILE_SAYS, None), ("on", True), ("off", False)], description="Age correction", style=_OWN_WIDTH
+            options=[(_FILE_SAYS, "file"), ("on", "on"), ("off", "off")], description="Age correction", style=_OWN_WIDTH
         )
         self.revision = widgets.Dropdown(
             options=[
-                (_FILE_SAYS, None),
+                (_FILE_SAYS, "file"),
                 ("by reviewers' decisions", "reviewed"),
                 ("by the published rules", "automatic"),
             ],
@@ -105,8 +105,8 @@ class LoadPanel(widgets.VBox):
         cohort = read_cohort(
             folder,
             as_of=as_of,
-            age_correction=self.age_correction.value,
-            baseline_revision=self.revision.value,
+            age_correction={"on": True, "off": False}.get(self.age_correction.value),
+            baseline_revision=None if self.revision.value == "file" else self.revision.value,
             progress=lambda words: self._progress(words, min(60, self.bar.value + 10)),
         )
 

@@ -82,11 +82,10 @@ def status(message: str, mend: str = "", kind: str = "note") -> str:
 def tiles(figures: Iterable[tuple[str, str, str]]) -> str:
     """Headline figures: what it is, the figure, and a line of detail for each."""
     cards = "".join(
-        f'<div class="ak-tile"><dt>{escape(name)}</dt>'
-        f"<dd><b>{escape(figure)}</b><span>{escape(detail)}</span></dd></div>"
+        f'<li class="ak-tile">{escape(name)} <b>{escape(figure)}</b> <span>{escape(detail)}</span></li>'
         for name, figure, detail in figures
     )
-    return f'<dl class="ak-tiles">{cards}</dl>'
+    return f'<ul class="ak-tiles">{cards}</ul>'
 
 
 def facts(pairs: Mapping[str, str]) -> str:

@@ -91,7 +91,7 @@ class PersonPanel(widgets.VBox):
             self.told.value = status(*self._unknown(person_id), kind="error")
             return False
         self._person, self._tests = person_id, self._lookup.tests(row)
-        self._shifts = self._lookup.shifts(self._tests)
+        self._shifts = self._lookup.shifts(row)
         self.spot.name = person_id
         self.facts.value = facts(self._lookup.facts(row))
         self.told.value = status(

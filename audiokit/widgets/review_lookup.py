@@ -99,10 +99,9 @@ class ReviewLookup:
         """Place in the review's grid of each test of the cohort's grid that takes part."""
         return np.cumsum(self.review.left_out == "") - 1
 
-    def shifts(self, tests: list[TestLine]) -> pd.DataFrame:
-        """Rows of the shifts table for some tests; none for a test that is not compared."""
-        at = np.array([test.at for test in tests if test.standing == "compared"], dtype=np.int32)
-        return to_frame(shifts_table(self.review, at))
+    def shifts(self, row: int) -> pd.DataFrame:
+        """A person's rows of the shifts table: a row per compared test, ear and criterion."""
+        return to_frame(shifts_table(self.review, slice(row, row + 1)))
 
     def cells(self, test: TestLine, ear: str) -> tuple[Cell, ...]:
         """The cells of one ear of a test, as recorded, in order of frequency."""

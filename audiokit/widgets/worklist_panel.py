@@ -21,6 +21,8 @@ _COLUMNS = (
 )
 _OVERDUE = {"yes": "▲ yes", "no": "no", "unknown": "? unknown"}
 _NO_SITE = "(no site)"
+_ALL = "\x00all"
+"""A value that no cell of a file can hold."""
 
 
 class WorklistPanel(widgets.VBox):
@@ -29,9 +31,9 @@ class WorklistPanel(widgets.VBox):
     def __init__(self, on_pick: Pick) -> None:
         self._on_pick = on_pick
         own = {"style": {"description_width": "initial"}}
-        self.site = widgets.Dropdown(options=[("all", None)], description="Site", **own)
-        self.action = widgets.Dropdown(options=[("all", None)], description="Action", **own)
-        self.overdue = widgets.Dropdown(options=[("all", None)], description="Overdue", **own)
+        self.site = widgets.Dropdown(options=[("all", _ALL)], description="Site", **own)
+        self.action = widgets.Dropdown(options=[("all", _ALL)], description="Action", **own)
+        self.overdue = widgets.Dropdown(options=[("all", _ALL)], description="Overdue", **own)
         self.search = widgets.Text(description="Search", placeholder="person, test, reason …", **own)
         self.lines = PagedTable(_COLUMNS, "Worklist", on_pick=self._picked, empty="no line of the worklist fits")
         self._worklist = pd.DataFrame()
@@ -68,7 +70,7 @@ class WorklistPanel(widgets.VBox):
             return
         keep = pd.Series(True, index=self._shown.index)
         for control, column in ((self.site, "site"), (self.action, "action"), (self.overdue, "overdue")):
-            if control.value is not None:
+            if control.value != _ALL:
                 keep &= self._shown[column] == control.value
         for word in self.search.value.casefold().split():
             keep &= self._searched.str.contains(word, regex=False)
@@ -86,8 +88,8 @@ class WorklistPanel(widgets.VBox):
         self._on_pick(str(line["person_id"]), str(line["test_id"]), str(line["criterion"]).partition(";")[0])
 
 
-def _choices(values: pd.Series, blank: str) -> list[tuple[str, str | None]]:
+def _choices(values: pd.Series, blank: str) -> list[tuple[str, str]]:
     """A filter's choices with the number of lines each leaves."""
     sizes = values.value_counts().sort_index()
     named = [(f"{value or blank} ({count(int(size))})", str(value)) for value, size in sizes.items()]
-    return [(f"all ({count(len(values))})", None), *named]
+    return [(f"all ({count(len(values))})", _ALL), *named]
