@@ -153,7 +153,7 @@ def _baseline_words(review: Review, book: BookReview) -> pa.Array:
         [
             lead,
             grid.test_id.take(pa.array(named)),
-            pa.compute.if_else(pa.array(known), mean, pa.scalar("; no exact mean hearing threshold level")),
+            pa.compute.if_else(pa.array(known), mean.column(), pa.scalar("; no exact mean hearing threshold level")),
             pa.compute.if_else(
                 pa.array(kept.status == PROPOSED), pa.scalar("; a licensed reviewer decides"), pa.scalar("")
             ),
