@@ -185,6 +185,7 @@ def _start(history: History, trail: Trail) -> None:
     trail.base[1] = initial
     trail.owner[:] = np.arange(len(history), dtype=np.int32)
     trail.decider[:] = -1
+    trail.met[:] = Met.UNKNOWN
     trail.sequence[:] = 0
 
 

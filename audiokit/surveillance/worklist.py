@@ -171,7 +171,7 @@ def _review_lines(review: Review, book: BookReview, lines: _Lines) -> None:
     clause = book.findings[name].criterion.baseline.at
     kept = book.baselines
     waiting = np.flatnonzero(kept.status == PROPOSED)
-    order = waiting[np.lexsort((kept.test[waiting], kept.from_day[waiting], kept.ear[waiting], kept.person[waiting]))]
+    order = waiting[np.lexsort((kept.found_at[waiting], kept.ear[waiting], kept.person[waiting]))]
     key = kept.person[order].astype(np.int64) * 2 + kept.ear[order]
     latest = order[np.append(key[1:] != key[:-1], True)] if len(order) else order
     for code in np.unique(kept.reason[latest]):

@@ -87,14 +87,17 @@ class LoadPanel(widgets.VBox):
         self.bar.value, self.bar.layout.display = 0, ""
         try:
             found = self._review(folder)
+            self._progress("drawing", 95)
+            self._on_loaded(found)
+            self.tell(f"Loaded: {found.cohort.settings.name}.")
         except AudiokitError as error:
             self.tell(error.message, error.mend, "error")
         except OSError as error:
             self.tell(f"{folder}: {error.strerror or error}", "check the path and the right to read it", "error")
-        else:
-            self._progress("drawing", 95)
-            self._on_loaded(found)
-            self.tell(f"Loaded: {found.cohort.settings.name}.")
+        except Exception as error:  # A defect: say so rather than leave the reader waiting, and let it be logged.
+            self._on_start()
+            self.tell(f"This cohort cannot be shown: {error!r}", "report this message with the version used", "error")
+            raise
         finally:
             self.button.disabled = False
             self.bar.layout.display = "none"
@@ -125,4 +128,3 @@ class LoadPanel(widgets.VBox):
 
     def _show_other(self) -> None:
         self.other.layout.display = "none" if self.folder.value else ""
-

@@ -90,20 +90,28 @@ class PersonPanel(widgets.VBox):
             self.clear(self._lookup)
             self.told.value = status(*self._unknown(person_id), kind="error")
             return False
-        self._person, self._tests = person_id, self._lookup.tests(row)
-        self._shifts = self._lookup.shifts(row)
-        self.spot.name = person_id
-        self.facts.value = facts(self._lookup.facts(row))
-        self.told.value = status(
-            "" if self._tests else "No test of this person was accepted, so there is no audiogram."
-        )
-        self.shown.layout.display = ""
-        self._offer(test_id, criterion)
-        self.findings.value = findings_html(self._lookup, person_id)
-        self._draw()
+        try:
+            self._fill(self._lookup, person_id, row, (test_id, criterion))
+        except Exception as error:  # A defect: nobody shall read half of one person and half of another.
+            self.clear(self._lookup)
+            self.told.value = status(f"{person_id} cannot be shown: {error!r}", "report this message", "error")
+            raise
         if reveal:
             self.spot.reveal()
         return True
+
+    def _fill(self, lookup: ReviewLookup, person_id: str, row: int, wanted: tuple[str, str]) -> None:
+        self._person, self._tests = person_id, lookup.tests(row)
+        self._shifts = lookup.shifts(row)
+        self.spot.name = person_id
+        self.facts.value = facts(lookup.facts(row))
+        self.told.value = status(
+            "" if self._tests else "No test of this person was accepted, so there is no audiogram."
+        )
+        self._offer(*wanted)
+        self.findings.value = findings_html(lookup, person_id)
+        self._draw()
+        self.shown.layout.display = ""
 
     def choose_test(self, index: Any) -> None:
         """Show another test as current, named by its row in the table of tests."""

@@ -27,6 +27,7 @@ class YearPanel(widgets.VBox):
         self._years = yearly_figures(review)
         criteria = [criterion for book in review.books for criterion in book.rulebook.criteria]
         self.criterion.options = [(f"{criterion.name} ({criterion.id})", criterion.id) for criterion in criteria]
+        self.criterion.value = criteria[0].id
         self._draw()
 
     def _draw(self) -> None:

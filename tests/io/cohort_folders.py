@@ -45,14 +45,17 @@ def counts(cohort: Cohort) -> dict[str, tuple[int, int, int]]:
     return {i.file: (i.rows_read, i.accepted, i.quarantined) for i in cohort.intake}
 
 
-def workbook(rows: list[list[object]], title: str = "Sheet") -> bytes:
-    """An xlsx file with one sheet."""
+def workbook(rows: list[list[object]], title: str = "Sheet", *, formulas: bool = False) -> bytes:
+    """An xlsx file with one sheet; a text that begins with = is a formula only where `formulas`."""
     book = openpyxl.Workbook()
     sheet = book.active
     assert sheet is not None
     sheet.title = title
     for row in rows:
         sheet.append(row)
+    for cell in sheet._cells.values() if not formulas else ():
+        if isinstance(cell.value, str):
+            cell.data_type = "s"
     data = io.BytesIO()
     book.save(data)
     return data.getvalue()

@@ -40,7 +40,7 @@ WIDE_HEAD = ["person_id", "tested_on", "purpose", "test_id", "right_1000", "left
 LONG_HEAD = ["person_id", "tested_on", "purpose", "test_id", "ear", "frequency_hz", "threshold"]
 GOOD_PEOPLE = "person_id,sex,birth_year\nP1,f,1980\nP2,m,1980\np1,f,1980\n9,m,\n"
 
-quick = settings(max_examples=60, deadline=None)
+quick = settings(max_examples=30, deadline=None)
 
 
 def text(head: list[str], rows: list[tuple[str, ...]]) -> str:
@@ -176,7 +176,7 @@ def _plain_problems(rows: list[tuple[str, ...]]) -> list[list[object]]:
     return found
 
 
-@settings(max_examples=200, deadline=None)
+@settings(max_examples=80, deadline=None)
 @given(rows=wide_rows)
 def test_problems_agree_with_a_plain_reader(tmp_path_factory, rows):
     folder = write(

@@ -78,7 +78,7 @@ def test_a_wrong_stated_size_does_not_hide_cells():
 
 
 def test_a_formula_without_stored_result_is_refused():
-    data = workbook([["a", "b"], ["x", "=1+1"]])
+    data = workbook([["a", "b"], ["x", "=1+1"]], formulas=True)
     with pytest.raises(CohortError, match=r"cell B2: the formula has no stored result"):
         read_xlsx(data, "t.xlsx")
 

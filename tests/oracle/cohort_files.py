@@ -64,8 +64,9 @@ def person_row(person: Person, cohort: HostileCohort) -> dict[str, str]:
 
 
 def columns_of_test(test: HearingTest) -> dict[str, str]:
-    clock = "" if test.clock is None else f"T{test.clock:%H:%M}"
-    spelled = random.Random(test.test_id).choice(("yes", "")) if test.valid else "no"
+    style = random.Random(test.test_id)
+    clock = "" if test.clock is None else test.clock.strftime(style.choice(("T%H:%M", " %H:%M", "T%H:%M:%S")))
+    spelled = style.choice(("yes", "")) if test.valid else "no"
     return {
         "person_id": test.person_id,
         "test_id": test.test_id,

@@ -80,14 +80,15 @@ def make_ids(rng: random.Random, count: int) -> list[str]:
     style = rng.randrange(4)
     tricky = rng.sample(TRICKY_IDS, min(len(TRICKY_IDS), max(1, count // 3)))
     plain = [
-        f"{n}" if style == 0 else f"P{n:04d}" if style == 1 else f"{n * 7919 % 99991:x}" for n in range(11, 11 + count)
+        f"{n}" if style == 0 else f"P{n:04d}" if style == 1 else f"{n * 7919 % 2147483647:x}"
+        for n in range(11, 11 + count)
     ]
     if style == 3:
         plain = [str(number) for number in range(11, 11 + count)]
     if style == 1:
         plain = [f"P{number:04d}" for number in range(count)]
     elif style == 2:
-        plain = [f"{number * 7919 % 99991:x}" for number in range(count)]
+        plain = [f"{number * 7919 % 2147483647:x}" for number in range(count)]
     elif style == 3:
         plain = [f"{rng.choice(TRICKY_IDS)}/{number}" for number in range(count)]
     ids = list(dict.fromkeys(tricky + plain))[:count]
@@ -190,14 +191,15 @@ def allowance(person: Person, then: dt.date, now: dt.date) -> int:
 
 def add_rejected(rng: random.Random, cohort: HostileCohort, test_ids: list[str]) -> None:
     """Tests of nobody, and tests before birth."""
-    for test in rng.sample(cohort.tests, min(2, len(cohort.tests))):
-        stranger = replace(test, test_id=test_ids.pop(), person_id=f"nobody {rng.randrange(100)}")
+    for known in rng.sample(cohort.tests, min(2, len(cohort.tests))):
+        stranger = replace(known, test_id=test_ids.pop(), person_id=f"nobody {rng.randrange(100)}")
         cohort.rejected.append(stranger)
+    some_test = {test.person_id: test for test in cohort.tests}
     for person in cohort.persons:
-        own = [test for test in cohort.tests if test.person_id == person.person_id]
-        if person.birth_date is not None and own and rng.random() < 0.1:
+        example = some_test.get(person.person_id)
+        if person.birth_date is not None and example is not None and rng.random() < 0.1:
             unborn = person.birth_date - dt.timedelta(days=1)
-            cohort.rejected.append(replace(own[0], test_id=test_ids.pop(), tested_on=unborn, purpose="baseline"))
+            cohort.rejected.append(replace(example, test_id=test_ids.pop(), tested_on=unborn, purpose="baseline"))
     cohort.tests += cohort.rejected
 
 

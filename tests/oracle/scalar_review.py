@@ -242,8 +242,12 @@ def baseline_order(row: dict) -> tuple:
 def review(persons: list[Person], tests: list[HearingTest], settings: Settings) -> Review:
     """Review accepted people and tests (tests in input order)."""
     result = Review()
+    valid: dict[str, list[HearingTest]] = {person.person_id: [] for person in persons}
+    for test in tests:
+        if test.valid and test.tested_on <= settings.as_of:
+            valid[test.person_id].append(test)
     for person in persons:
-        own = [t for t in tests if t.person_id == person.person_id and t.valid and t.tested_on <= settings.as_of]
+        own = valid[person.person_id]
         own.sort(key=lambda test: test.moment)  # stable: equal moments keep their input order
         reviewed = PersonReview(person, own, settings) if own else None
         if reviewed is not None:
