@@ -62,8 +62,9 @@ def test_wheel_holds_every_file_of_the_package(installed: Path) -> None:
 
 def test_wheel_holds_the_notebooks(installed: Path) -> None:
     """`audiokit open` works outside a checkout only if they travel in the package."""
-    notebooks = _files(ROOT / "notebooks")
+    notebooks = {path.name for path in (ROOT / "notebooks").glob("*.ipynb")}
     assert "yearly_review.ipynb" in notebooks
+    assert _files(installed / "audiokit" / "notebooks") == notebooks
     for name in notebooks:
         assert (installed / "audiokit" / "notebooks" / name).read_bytes() == (ROOT / "notebooks" / name).read_bytes()
 

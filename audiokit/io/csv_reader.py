@@ -15,7 +15,7 @@ from audiokit.io.headings import clean_headings
 from audiokit.io.raw import RaggedRows, RawTable
 
 _SMALLEST_BLOCK = 1 << 22
-_LARGEST_RECORD = 1 << 30
+_LARGEST_RECORD = 1 << 29
 
 
 def _no_such_line(file: str, header_row: int) -> CohortError:
@@ -102,7 +102,7 @@ def _body(records: Records, text: bytes, file: str, header_row: int | None) -> t
         longest = int(np.argmax(body.stop - body.start))
         if body.stop[longest] - body.start[longest] > _LARGEST_RECORD:
             raise CohortError(
-                f"{file}, line {body.line[longest]}: a single row of more than a gigabyte",
+                f"{file}, line {body.line[longest]}: a single row of more than half a gigabyte",
                 "look for a missing line break or a quotation mark that was not closed",
             )
     return text[records.start[head] : records.stop[head]].decode(), body

@@ -19,6 +19,8 @@ _ABSENT = -1
 
 def index_in(values: pa.Array, wanted: pd.Series) -> NDArray[np.int64]:
     """Position of each wanted text in an array of unique texts, -1 where it is not there."""
+    if not len(wanted):
+        return np.empty(0, dtype=np.int64)
     found = pc.index_in(pa.array(wanted, type=pa.string()), value_set=values.cast(pa.string()))
     return found.fill_null(_ABSENT).to_numpy(zero_copy_only=False).astype(np.int64)
 

@@ -8,7 +8,7 @@ from audiokit.core.dates import iso_text
 from audiokit.core.vocabulary import EARS, Purpose, Response
 from audiokit.model.grid import ThresholdGrid
 from audiokit.rules.spec import QualityLimits, tenths
-from audiokit.surveillance.review import Review
+from audiokit.surveillance.review import AFTER_AS_OF, INVALIDATED_BY_DECISION, MARKED_INVALID, Review
 
 COLUMNS = ("person_id", "test_id", "tested_on", "ear", "check", "value", "limit", "why")
 
@@ -59,11 +59,11 @@ def _rows(
 
 
 def _left_out(review: Review) -> pd.DataFrame:
-    grid, reason = review.cohort.grid, review.left_out
+    grid, reason = review.cohort.grid, review.left_out_code
     as_of = review.cohort.settings.as_of.isoformat()
-    after = np.flatnonzero(reason == "after_as_of")
-    marked = np.flatnonzero(reason == "marked_invalid")
-    decided = np.flatnonzero(reason == "invalidated_by_decision")
+    after = np.flatnonzero(reason == AFTER_AS_OF)
+    marked = np.flatnonzero(reason == MARKED_INVALID)
+    decided = np.flatnonzero(reason == INVALIDATED_BY_DECISION)
     number = review.invalidated_by[decided].astype(str).astype(object)
     return pd.concat(
         (

@@ -2,7 +2,7 @@
 
 from collections.abc import Callable
 from dataclasses import dataclass
-from functools import cached_property
+from functools import cache, cached_property
 from typing import Any
 
 import numpy as np
@@ -25,6 +25,9 @@ from audiokit.surveillance.events import OUTCOMES, Events, find_events
 from audiokit.surveillance.mechanics import Findings, Plan, run_mechanics
 from audiokit.surveillance.revision import OtherFrequencies
 
+TAKES_PART, AFTER_AS_OF, MARKED_INVALID, INVALIDATED_BY_DECISION = range(4)
+LEFT_OUT = ("", "after_as_of", "marked_invalid", "invalidated_by_decision")
+
 Progress = Callable[[str, int | None, int | None], None]
 
 
@@ -46,14 +49,14 @@ class Review:
     """A review in arrays; tables are made from it by `audiokit.reports`.
 
     grid    : the tests that take part: valid, not invalidated, not after as_of; every index below counts in it
-    history : their order      left_out : for each test of cohort.grid, why it takes no part ("" where it does)
+    history : their order      left_out_code : for each test of cohort.grid why it takes no part: position in LEFT_OUT
     invalidated_by : number of the decision that invalidates a test of cohort.grid, else 0
     """
 
     cohort: Cohort
     grid: ThresholdGrid
     history: History
-    left_out: NDArray[np.object_]
+    left_out_code: NDArray[np.int8]
     invalidated_by: NDArray[np.int64]
     books: tuple[BookReview, ...]
 
@@ -61,6 +64,11 @@ class Review:
     def as_of_day(self) -> int:
         """Date of the review in days since 1970-01-01."""
         return to_days(self.cohort.settings.as_of)
+
+    @cached_property
+    def left_out(self) -> NDArray[np.object_]:
+        """For each test of cohort.grid why it takes no part, as text; "" where it does."""
+        return np.array(LEFT_OUT, dtype=object)[self.left_out_code]
 
     def tests_after_as_of(self) -> int:
         """How many accepted tests are dated after the review's date."""
@@ -87,7 +95,7 @@ class Review:
         return {
             "people": len(self.cohort.people),
             "tests": len(self.grid),
-            "tests_left_out": int((self.left_out != "").sum()),
+            "tests_left_out": int((self.left_out_code != TAKES_PART).sum()),
             "events": events,
             "worklist": actions,
         }
@@ -102,11 +110,10 @@ def review(cohort: Cohort, progress: Progress | None = None) -> Review:
     as_of_day = to_days(settings.as_of)
     rulebooks = [load_rulebook(name, settings.as_of) for name in settings.rulebooks]
     invalidated_by = invalidated_tests(cohort.decisions, cohort.grid, cohort.people)
-    left_out = np.full(len(cohort.grid), "", dtype=object)
-    left_out[invalidated_by > 0] = "invalidated_by_decision"
-    left_out[~cohort.grid.valid] = "marked_invalid"
-    left_out[cohort.grid.day > as_of_day] = "after_as_of"
-    grid = cohort.grid.take(left_out == "")
+    left_out = np.where(invalidated_by > 0, np.int8(INVALIDATED_BY_DECISION), np.int8(TAKES_PART))
+    left_out[~cohort.grid.valid] = MARKED_INVALID
+    left_out[cohort.grid.day > as_of_day] = AFTER_AS_OF
+    grid = cohort.grid.take(left_out == TAKES_PART)
     history = history_of(grid)
     books = tuple(_review_book(book, cohort, grid, history, as_of_day, progress) for book in rulebooks)
     return Review(cohort, grid, history, left_out, invalidated_by, books)
@@ -124,12 +131,13 @@ def _review_book(
     sums: dict[str, Sums] = {}
     ages: dict[str, AgeCorrection] = {}
     judged: dict[str, Judged] = {}
+    sums_at = cache(lambda frequencies: threshold_sums(grid, frequencies))
+    ages_by = cache(lambda name, frequencies: age_correction(age_table(name), frequencies, cohort.people, grid))
     for criterion in rulebook.criteria:
-        frequencies = criterion.frequencies_hz.value
-        sums[criterion.id] = threshold_sums(grid, frequencies)
+        frequencies = tuple(criterion.frequencies_hz.value)
+        sums[criterion.id] = sums_at(frequencies)
         if settings.age_correction and criterion.age_table is not None:
-            table = age_table(criterion.age_table.value)
-            ages[criterion.id] = age_correction(table, frequencies, cohort.people, grid)
+            ages[criterion.id] = ages_by(criterion.age_table.value, frequencies)
         judged[criterion.id] = _judged(rulebook, criterion, sums[criterion.id], ages.get(criterion.id))
     automatic = settings.baseline_revision == "automatic"
     decisions = baseline_decisions(cohort.decisions, grid, cohort.people, history, as_of_day, automatic)
@@ -165,4 +173,4 @@ def _judged(rulebook: Rulebook, criterion: Criterion, sums: Sums, ages: AgeCorre
 
 def _other_frequencies(grid: ThresholdGrid, criterion: Criterion) -> OtherFrequencies:
     at = [n for n, hz in enumerate(grid.frequencies_hz) if hz not in criterion.frequencies_hz.value]
-    return OtherFrequencies(grid.threshold[:, at], grid.response[:, at])
+    return OtherFrequencies(grid.threshold, grid.response, tuple(at))

@@ -73,29 +73,38 @@ def find_hits(better: Effective, held: Effective, day: NDArray[np.int32], months
 
 @dataclass(frozen=True)
 class OtherFrequencies:
-    """Thresholds at the frequencies outside the criterion's own, to break ties. [ear, frequency, test]"""
+    """Thresholds to break ties by, outside the criterion's own frequencies.
+
+    threshold, response : as in `ThresholdGrid` [ear, frequency, test]      at : positions of those frequencies
+    """
 
     threshold: NDArray[np.int16]
     response: NDArray[np.int8]
+    at: tuple[int, ...]
 
     def part(self, tests: slice) -> "OtherFrequencies":
         """The same for a stretch of tests."""
-        return OtherFrequencies(self.threshold[:, :, tests], self.response[:, :, tests])
+        return OtherFrequencies(self.threshold[:, :, tests], self.response[:, :, tests], self.at)
 
     def later_is_better(self, ear: int, earlier: Indices, later: Indices) -> Mask:
         """True where the later test is better elsewhere: at none of the frequencies worse, at one surely better.
 
-        Only frequencies with an interval in both tests count. A pair that is not surely equal or better counts as worse;
-        two no responses at one level are equal.
+        Only frequencies with an interval in both tests count. A pair that is not surely equal or better counts as
+        worse; two no responses at one level are equal.
         """
-        level_e, level_l = self.threshold[ear][:, earlier], self.threshold[ear][:, later]
-        response_e, response_l = self.response[ear][:, earlier], self.response[ear][:, later]
-        usable = (response_e <= Response.NO_RESPONSE) & (response_l <= Response.NO_RESPONSE)
-        both_open = (response_e == Response.NO_RESPONSE) & (response_l == Response.NO_RESPONSE)
-        closed = response_l == Response.MEASURED
-        not_worse = (closed & (level_l <= level_e)) | (both_open & (level_l == level_e))
-        better = closed & (level_l < level_e)
-        return (not_worse | ~usable).all(axis=0) & (better & usable).any(axis=0)
+        worse = np.zeros(len(later), dtype=bool)
+        better = np.zeros(len(later), dtype=bool)
+        for at in self.at:
+            level, response = self.threshold[ear, at], self.response[ear, at]
+            difference = level[later] - level[earlier]
+            then, now = response[earlier], response[later]
+            usable = (then <= Response.NO_RESPONSE) & (now <= Response.NO_RESPONSE)
+            closed = now == Response.MEASURED
+            both_open = (then == Response.NO_RESPONSE) & ~closed
+            not_worse = (closed & (difference <= 0)) | (both_open & (difference == 0))
+            worse |= usable & ~not_worse
+            better |= usable & closed & (difference < 0)
+        return better & ~worse
 
 
 def choose(hits: Hits, total: NDArray[np.int16], ear: int, other: OtherFrequencies) -> Indices:

@@ -16,15 +16,25 @@ Row = Mapping[Any, Any]
 """One row of the shifts table by column."""
 
 _STAND_IN = "\ue000"
-_CAPTION = "dB HL and difference in dB by frequency in Hz; the mean is taken over those in bold"
+_CAPTION = "dB HL and difference in dB, by frequency in Hz; the mean is of those in bold"
 _FLAG = {Response.MEASURED: 0, Response.NO_RESPONSE: int(OPEN)}
 _BOUND_SIGNS = {Bound.EXACT: "", Bound.AT_LEAST: "≥ ", Bound.AT_MOST: "≤ "}
 
 
-def clauses(why: str, name: str) -> list[str]:
-    """The clauses of a `why`, in order; nothing is left out. name : an id in it that may itself hold the separator."""
-    held = why.replace(name, _STAND_IN) if name else why
-    return [part.replace(_STAND_IN, name) for part in held.split("; ")]
+def clauses(why: str, clause: str, baseline_id: str) -> list[str]:
+    """The parts of a `why`, one per line and in order; nothing is left out.
+
+    clause, baseline_id : the rule's clause that heads it and the test it names, either of which may hold a separator
+    """
+    held = why.replace(baseline_id, _STAND_IN) if baseline_id else why
+    head, rest = (clause, held[len(clause) :].lstrip(": ")) if clause and held.startswith(clause) else ("", held)
+    parts = [part for piece in rest.split("; ") for part in _before(piece, f" less baseline {_STAND_IN}")]
+    return [part.replace(_STAND_IN, baseline_id) for part in ([head] if head else []) + parts]
+
+
+def _before(piece: str, words: str) -> list[str]:
+    at = piece.find(words)
+    return [piece] if at < 0 else [piece[:at], piece[at + 1 :]]
 
 
 def difference(current: Cell, baseline: Cell) -> str:
@@ -67,7 +77,7 @@ def arithmetic_block(
     met = str(row["met"])
     value = decibels(_number(row["value_db"]), str(row["bound"]))
     corrected = "corrected shift" if row["correction_db"] else "mean shift"
-    lines = clauses(str(row["why"]), str(row["baseline_test_id"]))
+    lines = clauses(str(row["why"]), criterion.shift_at_least_db.at, str(row["baseline_test_id"]))
     listed = "".join(f"<li>{text(line)}</li>" for line in lines)
     return (
         f'<section class="ak-arithmetic" aria-label="{ear} ear, arithmetic">'
@@ -102,4 +112,4 @@ def _verdict(row: Row | None) -> str:
     if row is None:
         return "not compared"
     met = str(row["met"])
-    return f'<b class="ak-{met}">{MET_WORDS[met]}</b> {decibels(_number(row["value_db"]), str(row["bound"]))}'
+    return f'<b class="ak-{met}">{MET_WORDS[met]}</b>, {decibels(_number(row["value_db"]), str(row["bound"]))}'

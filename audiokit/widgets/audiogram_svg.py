@@ -111,10 +111,9 @@ def draw_audiogram(ear: str, curves: Sequence[Curve], marked_hz: Sequence[int] =
     cells = [cell for curve in curves for cell in curve.cells]
     axes = _Axes.around(cells)
     absent = _absent_letters(axes, curves)
-    key = _key(
-        ear, curves, axes.bottom + (34 if absent else 18), any(c.response == Response.NO_RESPONSE for c in cells)
-    )
-    height = axes.bottom + (34 if absent else 18) + 17 * key.count('class="ak-key"') + 2
+    key_top = axes.bottom + (42 if absent else 18)
+    key = _key(ear, curves, key_top, any(cell.response == Response.NO_RESPONSE for cell in cells))
+    height = key_top + 17 * key.count('class="ak-key"') + 2
     width = axes.right + _RIGHT
     drawn = "".join(_curve(ear, curve, axes) for curve in curves)
     return (
@@ -189,7 +188,7 @@ def _symbol(ear: str, name: str, x: float, y: float) -> str:
     else:
         a, b, c, d = x - size, x + size, y - size, y + size
         shape = f'<path d="M{a:g} {c:g}L{b:g} {d:g}M{a:g} {d:g}L{b:g} {c:g}" style="{{}}"/>'
-    rim = "" if name == "current" else shape.format(f"fill:none;stroke:{_GROUND};stroke-width:5")
+    rim = "" if name == "current" else shape.format(f"fill:{_GROUND};stroke:{_GROUND};stroke-width:5")
     return rim + shape.format(_stroke(ear, name))
 
 
@@ -224,8 +223,10 @@ def _curve(ear: str, curve: Curve, axes: _Axes) -> str:
 def _absent_letters(axes: _Axes, curves: Sequence[Curve]) -> str:
     """Under the axis: what stands in the current test's cells without a level."""
     cells = [cell for curve in curves if curve.name == "current" for cell in curve.cells if not cell.drawn]
-    letters = (_text(axes.x(cell.hz), axes.bottom + 14, cell.short(), _INK, size=10) for cell in cells)
-    return "".join(letters)
+    return "".join(
+        _text(axes.x(cell.hz), axes.bottom + (13 if cell.hz in _OCTAVES_HZ else 25), cell.short(), _INK, size=10)
+        for cell in cells
+    )
 
 
 def _key(ear: str, curves: Sequence[Curve], y: float, with_arrow: bool) -> str:

@@ -42,6 +42,7 @@ def headline(review: Review) -> str:
 def _settings(review: Review) -> str:
     """What the answers below rest on, whatever the fields above say by now."""
     settings = review.cohort.settings
+    recording = {} if settings.recording_baseline == "original" else {"recording baseline": "the one in force"}
     return facts(
         {
             "cohort": settings.name,
@@ -49,10 +50,10 @@ def _settings(review: Review) -> str:
             "rulebook": ", ".join(settings.rulebooks),
             "age correction": "on" if settings.age_correction else "off",
             "baselines revised": {
-                "reviewed": "by reviewers' decisions",
-                "automatic": "by the published rules",
+                "reviewed": "by decisions",
+                "automatic": "by published rules",
             }[settings.baseline_revision],
-            "recording baseline": words(settings.recording_baseline),
+            **recording,
         }
     )
 

@@ -14,7 +14,7 @@ UNSEEN = "–"
 MET_WORDS = {"yes": "● met", "no": "○ not met", "unknown": "? cannot tell"}
 """Symbol and word for the three answers, so that none depends on colour."""
 
-SIGNS = {"exact": "", "at_least": "≥ ", "at_most": "≤ "}
+SIGNS = {"exact": "", "at_least": "≥\u202f", "at_most": "≤\u202f"}
 """What stands before a value that a no response leaves open on one side."""
 
 
@@ -39,7 +39,7 @@ def decibels(value: float | None, bound: str = "exact") -> str:
     """A value in dB as the files write it, with its sign where it is open on one side."""
     if value is None or value != value or bound == "none":
         return "not computable"
-    return f"{SIGNS[bound]}{value:.4f}".rstrip("0").rstrip(".").replace("-", "−") + " dB"
+    return f"{SIGNS[bound]}{value:.4f}".rstrip("0").rstrip(".").replace("-", "−") + "\u202fdB"
 
 
 def count(number: int) -> str:

@@ -29,7 +29,7 @@ STANDING = ("confirmed", "no_retest", "found_at_retest")
 _MIME = "application/vnd.plotly.v1+json"
 
 
-def year_figure(years: pd.DataFrame, title: str) -> Any:
+def year_figure(years: pd.DataFrame) -> Any:
     """Stacked bars by year as a plotly figure.
 
     years : rows of `yearly_figures` for one criterion
@@ -51,17 +51,17 @@ def year_figure(years: pd.DataFrame, title: str) -> Any:
             marker={
                 "color": colour,
                 "line": {"color": "#222", "width": 1},
-                "pattern": {"shape": pattern, "fgcolor": "#ffffff", "fgopacity": 0.75, "size": 7, "solidity": 0.25},
+                "pattern": {"shape": pattern, "fillmode": "overlay", "fgcolor": "#fff", "size": 7, "solidity": 0.25},
             },
             hovertemplate="%{x}, " + words(outcome) + ": %{y}<extra></extra>",
         )
     figure.update_layout(
         template="none",
         barmode="stack",
-        width=620,
-        height=380,
-        margin={"l": 52, "r": 12, "t": 74, "b": 44},
-        title={"text": title, "font": {"size": 14}, "x": 0, "xref": "paper", "y": 0.97},
+        width=500,
+        height=350,
+        margin={"l": 48, "r": 34, "t": 52, "b": 44},
+        uniformtext={"minsize": 11, "mode": "hide"},
         legend={
             "orientation": "h",
             "x": 0,
