@@ -52,7 +52,7 @@ class CellRules:
 class ParsedCells:
     """Per distinct text: level in tenths of a dB HL (0 where there is none), response, fault code ("" where none).
 
-    has_level_limit : True where the level is the limit set for the frequency, which `levels` fills in
+    at_limit : True where the level is the limit set for the frequency, which `levels` fills in
     """
 
     level: NDArray[np.int16]

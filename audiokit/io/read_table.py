@@ -28,6 +28,17 @@ def _read_bytes(source: SourceFile) -> bytes:
         ) from error
 
 
+def _check_sign(data: bytes, suffix: str, file: str) -> None:
+    """A file whose first bytes belong to another kind of file is refused, whatever its name says."""
+    expected = {".csv": None, ".xlsx": _ZIP, ".parquet": _PARQUET}[suffix]
+    for sign, what in _SIGNS.items():
+        if data.startswith(sign) and sign != expected:
+            raise CohortError(
+                f"{file}: the file is {what}, whatever its name says",
+                "save it without password as .xlsx, or export it as .csv" if sign == _OLE else "give it its own suffix",
+            )
+
+
 def read_table(source: SourceFile) -> RawTable:
     """The raw table of one file.
 
@@ -44,13 +55,7 @@ def read_table(source: SourceFile) -> RawTable:
         raise CohortError(f"{source.name}: the file is empty", "export the table again")
     settings = source.settings
     all_different = {settings.columns.get("test_id", "test_id")}
-    expected = {".csv": None, ".xlsx": _ZIP, ".parquet": _PARQUET}[suffix]
-    for sign, what in _SIGNS.items():
-        if data.startswith(sign) and sign != expected:
-            raise CohortError(
-                f"{source.name}: the file is {what}, whatever its name says",
-                "save it without password as .xlsx, or export it as .csv" if sign == _OLE else "give it its own suffix",
-            )
+    _check_sign(data, suffix, source.name)
     if suffix == ".csv":
         from audiokit.io.csv_reader import read_csv
 

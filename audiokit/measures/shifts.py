@@ -37,7 +37,7 @@ def interval_ends(sums: Sums, correction: NDArray[np.int16] | None = None) -> En
 
 
 def three_valued(low: NDArray[np.int16], high: NDArray[np.int16], limit: int) -> NDArray[np.int8]:
-    """Whether intervals reach `limit`, all in one integer unit: yes if low does, no if high does not; codes of `Met`."""
+    """Whether intervals reach `limit`: yes if low does, no if high does not. One integer unit; codes of `Met`."""
     met = (low >= limit).view(np.int8)
     met -= (high < limit).view(np.int8)
     met += np.int8(Met.UNKNOWN)

@@ -15,6 +15,10 @@ MISSING = np.uint8(2)
 """Flag: at least one of the frequencies has no interval, so that no sum exists."""
 
 
+_STATES = np.int8(Response.DID_NOT_TEST)
+"""Codes up to here are the flags themselves: measured nothing, no response OPEN, all the others MISSING."""
+
+
 @dataclass(frozen=True)
 class Sums:
     """Sums over one frequency set, per ear and test.
@@ -45,6 +49,5 @@ def threshold_sums(grid: ThresholdGrid, frequencies_hz: Sequence[int]) -> Sums:
         for ear in (0, 1):
             total[ear] += grid.threshold[ear, at]
             response = grid.response[ear, at]
-            flags[ear] |= (response == Response.NO_RESPONSE).view(np.uint8)
-            flags[ear] |= (response > Response.NO_RESPONSE).view(np.uint8) << np.uint8(1)
+            flags[ear] |= np.minimum(response, _STATES).view(np.uint8)
     return Sums(total, flags, len(frequencies_hz))

@@ -6,8 +6,8 @@ import numpy as np
 
 from audiokit.core.vocabulary import Bound, Met, Response
 from audiokit.measures.sums import MISSING, OPEN, Sums
-from audiokit.reports.text_rows import Piece, Row, date_texts, inside_quotes, lookup, side_by_side, texts
 from audiokit.reports.numbers import Numbers, Rows, quotient_text, tenths_text
+from audiokit.reports.text_rows import Piece, Row, date_texts, inside_quotes, lookup, side_by_side, texts
 from audiokit.rules.spec import Criterion, tenths
 from audiokit.surveillance.review import BookReview, Review
 

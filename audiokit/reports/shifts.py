@@ -9,9 +9,9 @@ import pyarrow.csv
 from numpy.typing import NDArray
 
 from audiokit.core.vocabulary import EARS, Bound
-from audiokit.reports.text_rows import Piece, Row, content, csv_field, date_texts, lookup, side_by_side, texts
 from audiokit.reports.explain import shift_words, sum_words, test_names
 from audiokit.reports.numbers import Numbers, Rows, numbers_of, quotient_text
+from audiokit.reports.text_rows import Piece, Row, content, csv_field, date_texts, lookup, side_by_side, texts
 from audiokit.surveillance.block import stretches
 from audiokit.surveillance.review import BookReview, Review
 

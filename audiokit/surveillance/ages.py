@@ -28,7 +28,7 @@ class AgeCorrection:
 
 
 def ages_at_tests(people: People, grid: ThresholdGrid) -> NDArray[np.int16]:
-    """Age at each test: completed years, or the difference of years with only a birth year; -1 where unknown. [years]"""
+    """Age at each test: completed years, the difference of years with only a birth year; -1 where unknown. [years]"""
     born = np.where(people.birth_day == NO_DATE, 0, people.birth_day)
     number = np.where(people.birth_day == NO_DATE, people.birth_year.astype(np.int32) * 10000, calendar_number(born))
     whole_years = people.birth_day == NO_DATE

@@ -67,8 +67,8 @@ def baseline_history(history: History, changes: Changes, proposals: Changes) -> 
 def unanswered(proposals: Changes, decisions: BaselineDecisions) -> Changes:
     """The proposals that no reviewer has answered.
 
-    Answered is a proposal where a reviewer made that very test the baseline of the ear, or decided on the ear's baseline
-    with effect on or after the day on which the proposal was first revealed.
+    A proposal is answered where a reviewer made that very test the baseline of the ear, or decided on the ear's
+    baseline with effect on or after the day on which the proposal was first revealed.
     """
     if not len(decisions.person) or not len(proposals.person):
         return proposals

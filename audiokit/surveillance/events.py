@@ -19,8 +19,9 @@ OUTCOMES = ("retest_open", "confirmed", "not_confirmed", "no_retest", "found_at_
 class Events:
     """One entry per test and ear that met the criterion, in order of test, right ear first.
 
-    test : the test that met it      slot : the periodic test of its run      deciding : the retest that decided the ear,
-    else the test itself      outcome : position in OUTCOMES      decided : a retest decided
+    test : the test that met it      slot : the periodic test of its run
+    deciding : the retest that decided the ear, else the test itself      decided : a retest decided
+    outcome : position in OUTCOMES
     """
 
     test: Indices

@@ -168,7 +168,7 @@ def by_decision(history: History, decisions: BaselineDecisions) -> Finder:
 
 
 def _first_slot_after(history: History, trail: Trail, decisions: BaselineDecisions, which: Indices) -> Indices:
-    """Index of the first compared periodic test dated after each decision's effect, else one past the person's tests."""
+    """First compared periodic test dated after each decision's effect, else one past the person's tests."""
     person = decisions.person[which]
     end = history.first[1:].astype(np.int32)[person]
     at = np.maximum(history.initial[person] + 1, 0).astype(np.int32)

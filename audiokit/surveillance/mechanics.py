@@ -115,7 +115,7 @@ def _block(
                 find = by_persistence(part, mine, months, elsewhere)
             else:
                 find = by_decision(part, decisions.part(people, tests.start))
-            view = walk(part, mine, opened_by, window, find, trail)
+            view = walk(part, mine, opened_by, window, find, trail, looks_back=plan.automatic)
             if not plan.automatic:
                 view = view or candidates(part, mine, trail)
                 proposals[criterion.id] = _proposals(part, mine, trail, view, months, elsewhere)
@@ -141,7 +141,7 @@ def _met_in_either_ear(answers: list[NDArray[np.int8]]) -> NDArray[np.int32]:
 def _proposals(
     history: History, judged: Judged, trail: Trail, view: Round, months: int, other: OtherFrequencies
 ) -> Changes:
-    """Every revision the rules would make on the sequences as they are, each distinct one where it is first revealed."""
+    """Every revision the rules would make on the sequences as they are, each distinct one where first revealed."""
     found = []
     for ear in (0, 1):
         hits = revision_hits(history, judged, trail, ear, view, months, None)

@@ -130,11 +130,18 @@ person (both ears where they change together) and the index of the first test th
 
 
 def walk(
-    history: History, judged: Judged, opened_by: Indices | None, window_days: int, find: Finder, trail: Trail
+    history: History,
+    judged: Judged,
+    opened_by: Indices | None,
+    window_days: int,
+    find: Finder,
+    trail: Trail,
+    looks_back: bool = False,
 ) -> Round | None:
     """Judge every test of a block into `trail`. Returns the round of all tests where no baseline changed, else None.
 
     opened_by : tests that open the retest window by another criterion, ascending
+    looks_back : the finder needs the whole of each ear's present sequence, not only what comes after the last change
     """
     _start(history, trail)
     follows = follows_within(history.linkable, history.day, window_days)
@@ -152,10 +159,12 @@ def walk(
         since[changes.ear, changes.person] = from_row
         active = np.unique(changes.person)
         latest = np.maximum(since[0, active], since[1, active])
-        active = active[latest < end[active]]
+        unfinished = latest < end[active]
+        active, latest = active[unfinished], latest[unfinished]
         if not len(active):
             break
-        rows, _ = index_ranges(np.minimum(since[0, active], since[1, active]), end[active])
+        begin = np.minimum(since[0, active], since[1, active]) if looks_back else latest
+        rows, _ = index_ranges(begin, end[active])
         view = _judge(history, judged, trail, rows, follows, opened_by, window_days)
     trail.changes = Changes.join(found)
     return None if found else first

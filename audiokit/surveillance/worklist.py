@@ -130,7 +130,7 @@ def _event_lines(review: Review, book: BookReview, lines: _Lines) -> None:
                 continue
             open_ = asks if action == "notify" else asks & ~_found_unrelated(review, name, events.test, events.ear)
             why = {
-                "notify": f"{criterion.name}: written notice within {value.value} days of the determination ({value.at})",
+                "notify": f"{criterion.name}: notice within {value.value} days of the determination ({value.at})",
                 "record": f"{criterion.name}: entry in the log if work-related ({value.at})",
             }[action]
             lines.add(
@@ -199,8 +199,8 @@ def _undecided_levels(review: Review, book: BookReview, lines: _Lines) -> None:
 
 
 def latest_effective_tests(review: Review) -> tuple[NDArray[np.int64], NDArray[np.int32]]:
-    """People with a test that takes part, and each one's latest periodic result (its deciding retest where there is one,
-    the initial baseline where nothing came later)."""
+    """People with a test that takes part, and each one's latest periodic result: its deciding retest where there is
+    one, the initial baseline where nothing came later."""
     book = review.books[0]
     trail = book.findings[book.rulebook.revision.criterion].trail
     people = np.flatnonzero(review.history.initial >= 0)

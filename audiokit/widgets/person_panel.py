@@ -126,8 +126,8 @@ class PersonPanel(widgets.VBox):
 
     def _asked(self, _change: Any) -> None:
         wanted = self.asked.value.strip()
-        if wanted and self._lookup is not None:
-            self.show(wanted, reveal=True)
+        if wanted and self._lookup is not None and self.show(wanted, reveal=True):
+            self.asked.value = ""  # so that the same id can be asked for again
 
     def _offer(self, test_id: str, criterion: str) -> None:
         """Fill both choices and choose; nothing is drawn until both stand."""

@@ -37,9 +37,7 @@ class YearPanel(widgets.VBox):
         label = next(label for label, value in self.criterion.options if value == name)
         years = self._years[self._years["criterion"] == name].reset_index(drop=True)
         self.summary.value = f'<p class="ak-note">{text(year_summary(years, label))}</p>'
-        self.chart.outputs = (
-            figure_output(year_figure(years, "Events by year of the test and outcome")) if len(years) else ()
-        )
+        self.chart.outputs = figure_output(year_figure(years)) if len(years) else ()
         self.numbers.value = _numbers(years)
 
 
@@ -48,13 +46,17 @@ def _numbers(years: pd.DataFrame) -> str:
         ("Year", "left"),
         ("Tests", "right"),
         ("People tested", "right"),
+        ("People with event", "right"),
         ("Events that stand", "right"),
-        ("People with one", "right"),
         *((words(outcome).capitalize(), "right") for outcome in OUTCOME_MARKS),
-        ("Tests that cannot tell", "right"),
+        ("Cannot tell", "right"),
     ]
-    keys = ["tests", "people", "events", "people_with_event", *OUTCOME_MARKS, "tests_unknown"]
+    keys = ["tests", "people", "people_with_event", "events", *OUTCOME_MARKS, "tests_unknown"]
     rows = [(str(int(row["year"])), *(count(int(row[key])) for key in keys)) for row in years.to_dict("records")]
     return table(
-        "Events per ear; those confirmed, without retest or found at the retest stand", columns, rows, "no test"
+        "Events per ear; those confirmed, without retest or found at the retest stand",
+        columns,
+        rows,
+        "no test",
+        "ak-years",
     )

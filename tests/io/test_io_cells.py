@@ -20,7 +20,10 @@ from audiokit.io.words import (
 MEASURED, NR, DNT, CNT, BLANK = list(Response)
 
 
-def cell(text: str, rules: CellRules = CellRules(), limit: int = 1000) -> tuple[int, int] | str:
+CONTRACT = CellRules()
+
+
+def cell(text: str, rules: CellRules = CONTRACT, limit: int = 1000) -> tuple[int, int] | str:
     parsed = parse_cells([text], rules)
     if parsed.fault[0]:
         return str(parsed.fault[0])
@@ -39,7 +42,8 @@ def cell(text: str, rules: CellRules = CellRules(), limit: int = 1000) -> tuple[
         ("90 +", (900, NR)), ("NR@92.5", (925, NR)), ("NR@-5", (-50, NR)), ("NR@120", (1200, NR)),
         ("NR@121", "out_of_range"), (">120.1", "out_of_range"), ("90.05+", "finer_than_tenth"), ("NR", (1000, NR)),
         ("nr", (1000, NR)), ("DNT", (0, DNT)), ("dnt", (0, DNT)), ("CNT", (0, CNT)), ("Cnt", (0, CNT)),
-        ("", (0, BLANK)), ("+5", "unreadable_threshold"), ("1 5", "unreadable_threshold"), ("7,5", "unreadable_threshold"),
+        ("", (0, BLANK)), ("+5", "unreadable_threshold"), ("1 5", "unreadable_threshold"),
+        ("7,5", "unreadable_threshold"),
         ("15.", "unreadable_threshold"), (".5", "unreadable_threshold"), ("1e1", "unreadable_threshold"),
         ("NR 90", "unreadable_threshold"), (">90+", "unreadable_threshold"), ("<10", "unreadable_threshold"),
         ("NaN", "unreadable_threshold"), ("\u0661\u0665", "unreadable_threshold"), ("15 dB", "unreadable_threshold"),

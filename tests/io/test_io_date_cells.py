@@ -56,7 +56,8 @@ def test_a_date_is_read_just_where_the_calendar_has_it(year, month, day):
         ("2024-W01-1", "unreadable_date"), ("yesterday", "unreadable_date"), ("45000", "unreadable_date"),
         ("\u0662\u0660\u0662\u0664-01-05", "unreadable_date"), ("2024-01-05T24:00", "impossible_date"),
         ("2024-01-05T08:60", "impossible_date"), ("2023-02-29", "impossible_date"), ("1899-12-31", "impossible_date"),
-        ("2201-01-01", "impossible_date"), ("2024-01-05T08:30Z", "zone_offset"), ("2024-01-05T08:30+01:00", "zone_offset"),
+        ("2201-01-01", "impossible_date"), ("2024-01-05T08:30Z", "zone_offset"),
+        ("2024-01-05T08:30+01:00", "zone_offset"),
         ("2024-01-05 08:30:00 -0500", "zone_offset"), ("2024-01-05T08:30:00.5+02", "zone_offset"),
     ],
 )  # fmt: skip

@@ -34,7 +34,8 @@ def test_rows_make_tests_by_person_and_time(tmp_path):
 
 
 def test_rows_make_tests_by_test_id_where_given(tmp_path):
-    rows = "P1,2020-01-01,r,1000,10,A,baseline,,\nP1,2020-01-01,l,1000,20,B,annual,X,2\nP1,2020-01-01,r,1000,30,B,Annual,X,2.0\nP1,2020-01-01,r,500,5,,,,\n"
+    rows = "P1,2020-01-01,r,1000,10,A,baseline,,\nP1,2020-01-01,l,1000,20,B,annual,X,2\n"
+    rows += "P1,2020-01-01,r,1000,30,B,Annual,X,2.0\nP1,2020-01-01,r,500,5,,,,\n"
     grid = with_tests(tmp_path, rows, WITH_ID).grid
     assert grid.test_id.to_pylist() == ["A", "B", "P1@2020-01-01"]
     assert grid.purpose.tolist() == [1, 2, 0]
@@ -47,7 +48,8 @@ def test_rows_make_tests_by_test_id_where_given(tmp_path):
     ("rows", "expected", "tests"),
     [
         ("P1,2020-01-01,both,1000,1\nP1,2020-01-01,r,900,1\nP1,2020-01-01,l,1000,x\nP1,2020-01-01,l,500,5\n",
-         [[2, "ear", "unknown_ear"], [3, "frequency_hz", "unknown_frequency"], [4, "threshold", "unreadable_threshold"]], 1),
+         [[2, "ear", "unknown_ear"], [3, "frequency_hz", "unknown_frequency"],
+          [4, "threshold", "unreadable_threshold"]], 1),
         ("P1,2020-01-01,,,\n", [[2, "ear", "unknown_ear"], [2, "frequency_hz", "unknown_frequency"]], 0),
         (",,,,\n", [[2, "", "blank_row"]], 0),
         ("P1,2020-01-01,r,1000,1\nP1,2020-01-01,r,1000,1\n", [[3, "", "duplicate_row"]], 1),

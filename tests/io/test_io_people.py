@@ -28,7 +28,8 @@ def test_people_are_in_order_of_identifier_by_code_point(tmp_path):
 
 
 def test_dates_and_years(tmp_path):
-    rows = "A,f,1980-06-15,1980,2020-01-31,2001-02-03,2002-01-01\nB,f,,1975,,,\nC,f,1850-01-01,,,,\nD,f,,,,,\nE,m,,1980.0,,,\n"
+    rows = "A,f,1980-06-15,1980,2020-01-31,2001-02-03,2002-01-01\nB,f,,1975,,,\n"
+    rows += "C,f,1850-01-01,,,,\nD,f,,,,,\nE,m,,1980.0,,,\n"
     cohort = people(tmp_path, rows)
     assert problems(cohort, "people.csv") == []
     found = cohort.people
@@ -52,7 +53,8 @@ def test_columns_that_are_absent_are_not_recorded(tmp_path):
         ("A,x,,,,,\nB,2,,,,,\n", [[2, "sex", "unknown_sex"], [3, "sex", "unknown_sex"]]),
         ("A,f,1980-01-01,1981,,,\nB,f,1980-01-01,1980,,,\n", [[2, "birth_year", "conflicting_birth"]]),
         ("A,f,1849-12-31,,,,\nB,f,01/02/1980,,,,\nC,f,1980-02-30,,,,\n",
-         [[2, "birth_date", "impossible_date"], [3, "birth_date", "unreadable_date"], [4, "birth_date", "impossible_date"]]),
+         [[2, "birth_date", "impossible_date"], [3, "birth_date", "unreadable_date"],
+          [4, "birth_date", "impossible_date"]]),
         ("A,f,,1849,,,\nB,f,,2201,,,\nC,f,,80,,,\nD,f,,1980.5,,,\nE,f,,1850,,,\nF,f,,2200,,,\n",
          [[r, "birth_year", "unreadable_year"] for r in (2, 3, 4, 5)]),
         ("A,f,,,x,1899-01-01,2020-01-01T00:00Z\n",

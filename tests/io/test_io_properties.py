@@ -1,4 +1,4 @@
-"""What holds for any table: nothing is lost, formats agree, order does not matter, reading agrees with a plain reader."""
+"""What holds for any table: nothing is lost, formats agree, order does not matter, a plain reader agrees."""
 
 import datetime
 import shutil
@@ -189,3 +189,60 @@ def test_the_same_files_read_twice_are_the_same(tmp_path):
     folder = write(tmp_path, people_csv=GOOD_PEOPLE, tests_csv=text(WIDE_HEAD, [("P1", "x", "", "", "y", "1")] * 3))
     first, second = read_cohort(folder), read_cohort(folder)
     assert first.quarantine.equals(second.quarantine) and grid_rows(first) == grid_rows(second)
+
+
+def _plain_tests(rows: list[tuple[str, ...]]) -> dict[tuple[str, ...], dict[tuple[str, str], str]]:
+    """Tests of a long table row by row: key -> cells that are accepted; tests without accepted rows are absent."""
+    known = {"P1", "P2", "p1", "9"}
+    found: dict[tuple[str, ...], dict[tuple[str, str], str]] = {}
+    keyed: dict[tuple[str, ...], list[tuple[str, ...]]] = {}
+    stripped = [tuple(cell.strip() for cell in row) for row in rows]
+    moment = {"2020-01-01": "2020-01-01T00:00"}
+    for person, date, purpose, test_id, ear, hz, cell in stripped:
+        if person and date in [*DATES[:3], "1979-01-01"]:
+            key = ("id", test_id) if test_id else (person, moment.get(date, date))
+            keyed.setdefault(key, []).append((person, moment.get(date, date), purpose.lower(), ear, hz, cell, test_id))
+    for key, members in keyed.items():
+        if len({m[:2] for m in members}) > 1 or len({"?" if m[2] == "nonsense" else m[2] for m in members}) > 1:
+            continue
+        person, date, purpose = members[0][:3]
+        if person not in known or purpose == "nonsense" or (date < "1980" and person != "9"):
+            continue
+        for ear, hz in {(m[3], m[4]) for m in members}:
+            cells = {tuple(r) for r in stripped if _same_cell(r, key, ear, hz, moment)}
+            cell = next(iter(cells))[-1]
+            if len(cells) == 1 and ear in ("right", "L") and hz != "900" and cell not in ("x", "15.25", "130"):
+                found.setdefault(key, {})[(ear, hz)] = cell
+    return found
+
+
+def _same_cell(row: tuple[str, ...], key: tuple[str, ...], ear: str, hz: str, moment: dict[str, str]) -> bool:
+    own = ("id", row[3]) if row[3] else (row[0], moment.get(row[1], row[1]))
+    return own == key and row[4:6] == (ear, hz) and row[1] in [*DATES[:3], "1979-01-01"] and bool(row[0])
+
+
+@settings(max_examples=60, deadline=None)
+@given(rows=long_rows)
+def test_long_tests_agree_with_a_plain_reader(tmp_path_factory, rows):
+    folder = write(
+        fresh(tmp_path_factory.getbasetemp() / "long"), people_csv=GOOD_PEOPLE, tests_csv=text(LONG_HEAD, rows)
+    )
+    grid = read(folder).grid
+    expected = _plain_tests(rows)
+    assert len(grid) == len(expected)
+    assert {key[1] for key in expected if key[0] == "id"} == {i for i in grid.test_id.to_pylist() if "@" not in i}
+    level = {"10": 100, "15.0": 150, "NR": 1000, "NR@90": 900, "90+": 900, "-20": -200}
+    wanted = sorted(
+        (("right", "L").index(ear), int(hz), level.get(cell, 0))
+        for cells in expected.values()
+        for (ear, hz), cell in cells.items()
+        if cell
+    )
+    recorded = [
+        (ear, hz, int(grid.threshold[ear, f, t]))
+        for ear in (0, 1)
+        for f, hz in enumerate(grid.frequencies_hz)
+        for t in range(len(grid))
+        if grid.response[ear, f, t] != 4
+    ]
+    assert sorted(recorded) == wanted

@@ -69,7 +69,7 @@ def test_every_key_is_read(tmp_path):
     assert [f.name for f in found.tests] == ["north.csv", "south.xlsx", "west.csv"]
     assert found.people[0].settings.columns == {"person_id": "Emp"}
     assert found.people[0].settings.columns_section == "[columns.people]"
-    north, south, west = (f.settings for f in found.tests)
+    north, _, west = (f.settings for f in found.tests)
     assert north == west
     assert north.columns == {"right_500": "R500"}
     assert north.cells == {"999": Response.NO_RESPONSE, "888": Response.NO_RESPONSE, "-": Response.DID_NOT_TEST}
