@@ -14,7 +14,10 @@ if TYPE_CHECKING:
 _KINDS = {
     "invalidate_test": "leave a test out of everything",
     "revise_baseline": "make a test one ear's new baseline, for tests dated after it takes effect",
+    "refuse_baseline": "a proposed test does not become one ear's baseline",
     "not_work_related": "a recordable shift is not work-related",
+    "notice_given": "the written notice of a shift was given: closes its line on the worklist",
+    "entry_made": "the entry in the log was made: closes its line on the worklist",
     "note": "a remark on a person, a test or an ear",
 }
 

@@ -11,7 +11,12 @@ from audiokit.core.dates import to_date
 from audiokit.core.vocabulary import EARS
 from audiokit.example.programme import Revisions
 from audiokit.example.scenario import AS_OF, SITES
+from audiokit.io.cohort import read_cohort
 from audiokit.io.decisions import record_decision
+from audiokit.surveillance.review import review
+
+CLOSED_UNTIL = datetime.date(2025, 10, 1)
+"""Notices and log entries due before this day were made."""
 
 _REVIEWERS = {site.prefix: site.reviewer for site in SITES if site.reviewer[0]}
 
@@ -75,6 +80,20 @@ def record_decisions(folder: Path, revisions: Revisions, tests: pd.DataFrame) ->
     numbers: dict[str, int] = {}
     for entry in entries:
         numbers[entry.test_id] = _record(folder, entry, numbers.get(entry.test_id))
+
+
+def close_old_lines(folder: Path) -> None:
+    """Record that the notices and entries due before CLOSED_UNTIL were made, where the site has a reviewer.
+
+    The people constructed by hand keep theirs, so that old lines stay on the worklist as well.
+    """
+    lines = review(read_cohort(folder)).worklist
+    kinds = {"notify": "notice_given", "record": "entry_made"}
+    old = lines["action"].isin(kinds) & (lines["due_on"] < CLOSED_UNTIL.isoformat())
+    old &= ~lines["person_id"].str.startswith("S9") & lines["person_id"].str[0].isin(_REVIEWERS)
+    for line in lines[old].itertuples():
+        reason = "copy in the person's file"
+        _record(folder, _Entry(AS_OF, kinds[line.action], line.person_id, line.test_id, reason, line.ear), None)
 
 
 def _revision_entries(revisions: Revisions, tests: pd.DataFrame) -> list[_Entry]:

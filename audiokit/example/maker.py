@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 
 from audiokit.core.errors import OutOfScopeError, OutputError
 from audiokit.example import faults
-from audiokit.example.deciding import record_decisions
+from audiokit.example.deciding import close_old_lines, record_decisions
 from audiokit.example.layouts import (
     about,
     bottling_hall_csv,
@@ -58,6 +58,7 @@ def make_example(folder: Path | str, *, seed: int = DEFAULT_SEED, people: int = 
         for name, content in files.items():
             (fresh / name).write_bytes(content)
         record_decisions(fresh, revisions, tests)
+        close_old_lines(fresh)
         _move(fresh, place)
     except OSError as error:
         mend = "check the rights and the room on the disk, or choose another folder"

@@ -19,7 +19,7 @@ def _order(person: NDArray[np.int32], stamp: NDArray[np.int64], place: NDArray[n
     """Tests by person, then time, then input."""
     if not len(person):
         return np.zeros(0, np.int64)
-    times, moment = np.unique(stamp, return_inverse=True)
+    moment, times = pd.factorize(stamp, sort=True)
     if (int(person.max()) + 1) * len(times) * (int(place.max()) + 1) > np.iinfo(np.int64).max:
         return np.lexsort((place, moment, person))
     # one number per test: numpy sorts these several times quicker than three keys
@@ -36,12 +36,15 @@ def _occurrence(person: NDArray[np.int32], day: NDArray[np.int32]) -> NDArray[np
 
 def make_ids(person_id: pa.StringArray, person: NDArray[np.int32], day: NDArray[np.int32]) -> pa.StringArray:
     """An id for each test from its person and day; later tests of the same person and day get #2, #3, …"""
-    days, which = np.unique(day, return_inverse=True)
+    which, days = pd.factorize(day)
     dates = pa.array(iso_text(days), pa.string()).take(pa.array(which))
     ids = pc.binary_join_element_wise(person_id.take(pa.array(person)), dates, "@")
     number = _occurrence(person, day)
-    later = pc.binary_join_element_wise(ids, pa.array(number).cast(pa.string()), "#")
-    return pc.if_else(pa.array(number > 1), later, ids)
+    later = np.flatnonzero(number > 1)
+    if not len(later):
+        return ids
+    numbered = pc.binary_join_element_wise(ids.take(pa.array(later)), pa.array(number[later]).cast(pa.string()), "#")
+    return pc.replace_with_mask(ids, pa.array(number > 1), numbered)
 
 
 def _test_ids(

@@ -40,7 +40,10 @@ class _Shape:
 _SHAPES = {
     "invalidate_test": _Shape(needed=("person_id", "test_id")),
     "revise_baseline": _Shape(needed=("person_id", "ear", "test_id")),
+    "refuse_baseline": _Shape(needed=("person_id", "ear", "test_id")),
     "not_work_related": _Shape(needed=("person_id", "ear", "test_id"), optional=("criterion",)),
+    "notice_given": _Shape(needed=("person_id", "ear", "test_id")),
+    "entry_made": _Shape(needed=("person_id", "ear", "test_id")),
     "note": _Shape(needed=("person_id",), optional=("ear", "test_id")),
     "undo": _Shape(),
 }
@@ -66,7 +69,9 @@ def record_decision(
 
     kind : one of KINDS, with what it is about:
         invalidate_test (person_id, test_id), revise_baseline (person_id, ear, test_id: that ear's new baseline),
+        refuse_baseline (person_id, ear, test_id: does not become that ear's baseline),
         not_work_related (person_id, ear, test_id; criterion, default DEFAULT_CRITERION),
+        notice_given, entry_made (person_id, ear, test_id: the event's test, as the worklist names it),
         note (person_id; ear and test_id optional), undo (undoes: the number of an entry in force, an undo included)
     takes_effect_on : ISO text or date; default the calendar date of recorded_at in its own time zone
     reviewer, role, reason : who decided, licence or role, and why; not blank

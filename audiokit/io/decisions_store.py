@@ -29,7 +29,7 @@ _RESTORE = (
 _SCHEMA = (
     """CREATE TABLE decision (
   decision_id INTEGER PRIMARY KEY,
-  kind TEXT NOT NULL CHECK (kind IN ('invalidate_test', 'revise_baseline', 'not_work_related', 'note', 'undo')),
+  kind TEXT NOT NULL CHECK (trim(kind) <> ''),
   person_id TEXT,
   ear TEXT CHECK (ear IN ('right', 'left')),
   test_id TEXT,

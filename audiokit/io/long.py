@@ -12,7 +12,7 @@ from audiokit.core.vocabulary import EARS, FREQUENCIES_HZ
 from audiokit.io.batch import TestBatch
 from audiokit.io.columns import OPTIONAL_TEST_COLUMNS, RECHECK_COLUMNS, TEXT_DETAILS
 from audiokit.io.date_cells import NO_STAMP
-from audiokit.io.repeats import NO_KEY, Key, Rows, Stack, check_conflicts, check_repeats, combine
+from audiokit.io.repeats import NO_KEY, Key, Rows, Stack, check_conflicts, check_repeats, pair
 from audiokit.io.shared_columns import SharedColumns, cell_rules, threshold_cells
 from audiokit.io.words import EAR_WORDS, parse_frequencies
 
@@ -70,8 +70,8 @@ def _number_tests(stack: Stack, shared: Sequence[SharedColumns]) -> Rows:
     stamp = np.concatenate([s.stamp for s in shared])
     unnamed = np.concatenate([s.table.column("person_id").blank() for s in shared])
     keyed = np.flatnonzero(~unnamed & (stamp != NO_STAMP))
-    pair = combine(stack.codes("person_id", keyed), pd.factorize(stamp[keyed])[0].astype(np.int64))
-    number = pair * 2
+    moment = pair(stack.codes("person_id", keyed), pd.factorize(stamp[keyed])[0].astype(np.int64))
+    number = moment * 2
     if any(s.table.has("test_id") for s in shared):
         given = stack.codes("test_id", keyed)
         has_id = np.concatenate(
@@ -83,7 +83,7 @@ def _number_tests(stack: Stack, shared: Sequence[SharedColumns]) -> Rows:
         number = np.where(has_id, given * 2 + 1, number)
         key = Key(np.full(len(stack), NO_KEY), "test_id", "the same test_id stands for another person or time in")
         key.numbers[keyed[has_id]] = given[has_id]
-        check_conflicts(stack, keyed, pair, key)
+        check_conflicts(stack, keyed, moment, key)
     test = np.full(len(stack), _NO_TEST, np.int64)
     test[keyed] = pd.factorize(number)[0]
     return test

@@ -88,9 +88,9 @@ def _unify(columns: Sequence[Encoded | None]) -> tuple[list[NDArray[np.int64]], 
     return found, int(numbers[0])
 
 
-def combine(first: Rows, second: Rows) -> Rows:
-    """One number for each pair of numbers, equal for equal pairs; numbers are not negative and pairs are few enough."""
-    return pd.factorize(first * (int(second.max(initial=0)) + 1) + second)[0].astype(np.int64)
+def pair(first: Rows, second: Rows) -> Rows:
+    """One number for each pair of numbers, equal for equal pairs; both are numbers of distinct things, from 0."""
+    return first * (int(second.max(initial=0)) + 1) + second
 
 
 def signatures(stack: Stack, rows: Rows) -> Rows:
@@ -101,7 +101,7 @@ def signatures(stack: Stack, rows: Rows) -> Rows:
     names = dict.fromkeys(name for table in stack.tables for name in (*table.mapped.heading, *table.mapped.others))
     found = np.zeros(len(rows), np.int64)
     for name in names:
-        found = combine(found, stack.codes(name, rows))
+        found = pd.factorize(pair(found, stack.codes(name, rows)))[0].astype(np.int64)
     return found
 
 

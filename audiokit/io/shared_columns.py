@@ -7,7 +7,7 @@ import pyarrow as pa
 import pyarrow.compute as pc
 from numpy.typing import NDArray
 
-from audiokit.core.dates import NO_DATE, iso_text, year_month_day
+from audiokit.core.dates import NO_DATE, iso_text
 from audiokit.core.vocabulary import Purpose
 from audiokit.io.cells import CellRules, ParsedCells, parse_cells
 from audiokit.io.columns import RECHECK_COLUMNS
@@ -79,19 +79,24 @@ def _find_people(table: SourceTable, known: KnownPeople, blank: NDArray[np.bool_
     return column.spread(place)
 
 
+def _earliest_days(people: People) -> NDArray[np.int64]:
+    """The first day on which each person can have been tested: of birth, or of the year of birth. [person]"""
+    new_year = (
+        (people.birth_year.astype(np.int64) - 1970).astype("datetime64[Y]").astype("datetime64[D]").astype(np.int64)
+    )
+    by_year = np.where(people.birth_year == 0, np.int64(NO_DATE), new_year)
+    return np.where(people.birth_day == NO_DATE, by_year, people.birth_day)
+
+
 def _check_birth(table: SourceTable, people: People, person: NDArray[np.int32], day: NDArray[np.int32]) -> None:
     """Note tests dated before the person's birth; where only the year of birth is known, before that year."""
-    known = (person != NOBODY) & (day != NO_DATE)
-    if not known.any() or not len(people):
+    if not len(people):
         return
-    birth_day, birth_year = people.birth_day[person], people.birth_year[person]
-    early = known & (birth_day != NO_DATE) & (day < birth_day)
-    by_year = known & (birth_day == NO_DATE) & (birth_year != 0)
-    if by_year.any():
-        early[by_year] = year_month_day(day[by_year])[0] < birth_year[by_year]
-    if early.any():
-        years = birth_year[early].astype(str).astype(object)
-        births = np.where(birth_day[early] != NO_DATE, iso_text(birth_day[early]), years)
+    early = np.flatnonzero((day < _earliest_days(people)[person]) & (person != NOBODY) & (day != NO_DATE))
+    if len(early):
+        who = person[early]
+        years = people.birth_year[who].astype(str).astype(object)
+        births = np.where(people.birth_day[who] != NO_DATE, iso_text(people.birth_day[who]), years)
         table.add("before_birth", early, "tested_on", pa.array(births, pa.string()))
 
 

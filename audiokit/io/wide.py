@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 from audiokit.io.batch import TestBatch, detail_texts, given_ids
 from audiokit.io.cells import ParsedCells
 from audiokit.io.columns import THRESHOLD_COLUMNS
-from audiokit.io.repeats import Key, Stack, check_repeats, combine
+from audiokit.io.repeats import Key, Stack, check_repeats, pair
 from audiokit.io.shared_columns import SharedColumns, cell_rules, threshold_cells
 
 
@@ -29,7 +29,7 @@ def check_wide_repeats(shared: Sequence[SharedColumns]) -> None:
     """Note repeated rows of all wide tables, and different rows that share a test_id."""
     stack = Stack([s.table for s in shared])
     stamps = pd.factorize(np.concatenate([s.stamp for s in shared]))[0].astype(np.int64)
-    near = combine(stack.codes("person_id"), stamps)
+    near = pair(stack.codes("person_id"), stamps)
     key = None
     if any(table.has("test_id") for table in stack.tables):
         what = "the same test_id stands with other contents in"

@@ -7,7 +7,7 @@ from numpy.typing import NDArray
 
 from audiokit.core.dates import NO_DATE
 from audiokit.surveillance.block import History
-from audiokit.surveillance.finders import BaselineDecisions
+from audiokit.surveillance.decided import DecisionEffect
 from audiokit.surveillance.revision import INITIAL
 from audiokit.surveillance.walk import Changes
 
@@ -64,12 +64,14 @@ def baseline_history(history: History, changes: Changes, proposals: Changes) -> 
     )
 
 
-def unanswered(proposals: Changes, decisions: BaselineDecisions) -> Changes:
+def unanswered(proposals: Changes, decided: DecisionEffect) -> Changes:
     """The proposals that no reviewer has answered.
 
-    A proposal is answered where a reviewer made that very test the baseline of the ear, or decided on the ear's
-    baseline with effect on or after the day on which the proposal was first revealed.
+    A proposal is answered where a reviewer made that very test the baseline of the ear or refused it, or decided on
+    the ear's baseline with effect on or after the day on which the proposal was first revealed.
     """
+    proposals = proposals.where(~decided.refused.holds(proposals.test, proposals.ear))
+    decisions = decided.answers
     if not len(decisions.person) or not len(proposals.person):
         return proposals
     ear_of_proposal = proposals.person.astype(np.int64) * 2 + proposals.ear

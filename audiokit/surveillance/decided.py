@@ -45,15 +45,41 @@ def _tests_of(rows: pd.DataFrame, grid: ThresholdGrid, people: People) -> NDArra
 
 
 @dataclass(frozen=True)
+class EarTests:
+    """Some ears of some tests, as they are named by decisions."""
+
+    test: NDArray[np.int64]
+    ear: NDArray[np.int64]
+
+    def holds(self, test: NDArray[np.integer], ear: NDArray[np.integer]) -> NDArray[np.bool_]:
+        """Which of the given tests and ears are among them."""
+        return np.isin(test.astype(np.int64) * 2 + ear, self.test * 2 + self.ear)
+
+
+def named_ear_tests(
+    decisions: pd.DataFrame, kind: str, grid: ThresholdGrid, people: People, criterion: str | None = None
+) -> EarTests:
+    """The tests and ears that decisions of one kind name, of one criterion where it is given."""
+    rows = decisions[decisions["kind"] == kind] if len(decisions) else _no_rows()
+    if criterion is not None and len(rows):
+        rows = rows[rows["criterion"] == criterion]
+    test = _tests_of(rows, grid, people)
+    ear = rows["ear"].map(EARS.index).to_numpy(dtype=np.int64)
+    return EarTests(test[test >= 0], ear[test >= 0])
+
+
+@dataclass(frozen=True)
 class DecisionEffect:
     """Decisions on baselines, and why the others have no effect.
 
     baselines : those that take effect      answers : all that name a test still in use, to answer proposals
+    refused : tests that a reviewer refused as baseline, and in which ear
     idle : decision_id, person_id, test_id, ear, why: one row per decision on a baseline without effect
     """
 
     baselines: BaselineDecisions
     answers: BaselineDecisions
+    refused: EarTests
     idle: pd.DataFrame
 
 
@@ -80,7 +106,12 @@ def baseline_decisions(
     effective = why == ""
     ear = rows["ear"].map(EARS.index).to_numpy(dtype=np.int8)
     idle = rows.assign(why=why)[~effective]
-    return DecisionEffect(_ordered(person, ear, day, test, effective), _ordered(person, ear, day, test, named), idle)
+    return DecisionEffect(
+        baselines=_ordered(person, ear, day, test, effective),
+        answers=_ordered(person, ear, day, test, named),
+        refused=named_ear_tests(decisions, "refuse_baseline", grid, people),
+        idle=idle,
+    )
 
 
 def _ordered(

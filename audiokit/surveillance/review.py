@@ -149,7 +149,7 @@ def _review_book(
         for name, found in findings.items()
     }
     revised = findings[rulebook.revision.criterion]
-    proposals = unanswered(revised.proposals, decisions.answers)
+    proposals = unanswered(revised.proposals, decisions)
     baselines = baseline_history(history, revised.trail.changes, proposals)
     return BookReview(rulebook, findings, sums, ages, events, baselines, decisions)
 

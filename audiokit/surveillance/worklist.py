@@ -10,12 +10,15 @@ from audiokit.core.dates import NO_DATE, add_months, iso_text
 from audiokit.core.vocabulary import EARS, Met
 from audiokit.rules.spec import Rulebook
 from audiokit.surveillance.baselines import IN_FORCE, PROPOSED
-from audiokit.surveillance.decided import index_in
+from audiokit.surveillance.decided import named_ear_tests
 from audiokit.surveillance.events import RETEST_OPEN
 from audiokit.surveillance.review import BookReview, Review
 from audiokit.surveillance.revision import REASONS
 
 COLUMNS = ("due_on", "overdue", "action", "person_id", "ear", "test_id", "criterion", "why")
+
+_CLOSED_BY = {"notify": ("notice_given",), "record": ("entry_made", "not_work_related")}
+"""The decisions that take a line off the list, by action."""
 
 _NO_EAR = np.int8(2)
 _EAR_TEXT = np.array([*EARS, ""], dtype=object)
@@ -128,9 +131,13 @@ def _event_lines(review: Review, book: BookReview, lines: _Lines) -> None:
         for action, value in (("notify", criterion.notify_days), ("record", criterion.record_days_after_retest)):
             if value is None:
                 continue
-            open_ = asks if action == "notify" else asks & ~_found_unrelated(review, name, events.test, events.ear)
+            open_ = asks.copy()
+            for kind in _CLOSED_BY[action]:
+                named = name if kind == "not_work_related" else None
+                closing = named_ear_tests(review.cohort.decisions, kind, review.grid, review.cohort.people, named)
+                open_ &= ~closing.holds(events.test, events.ear)
             why = {
-                "notify": f"{criterion.name}: notice within {value.value} days of the determination ({value.at})",
+                "notify": f"{criterion.name}: written notice within {value.value} days of determining it ({value.at})",
                 "record": f"{criterion.name}: entry in the log if work-related ({value.at})",
             }[action]
             lines.add(
@@ -150,20 +157,6 @@ def deadlines(review: Review, book: BookReview, criterion_id: str) -> tuple[NDAr
     after_retest = day[events.deciding] + np.int32(criterion.record_days_after_retest.value)
     without = day[events.test] + np.int32(criterion.record_days_without_retest.value)
     return np.where(events.decided, after_retest, without), events.stands()
-
-
-def _found_unrelated(
-    review: Review, criterion_id: str, test: NDArray[np.int32], ear: NDArray[np.int8]
-) -> NDArray[np.bool_]:
-    """Events that a reviewer found not work-related."""
-    decisions = review.cohort.decisions
-    rows = decisions[decisions["kind"] == "not_work_related"] if len(decisions) else decisions
-    if not len(rows):
-        return np.zeros(len(test), dtype=bool)
-    rows = rows[rows["criterion"] == criterion_id]
-    named = index_in(review.grid.test_id, rows["test_id"])
-    sides = rows["ear"].map(EARS.index).to_numpy(dtype=np.int64)
-    return np.isin(test.astype(np.int64) * 2 + ear, (named * 2 + sides)[named >= 0])
 
 
 def _review_lines(review: Review, book: BookReview, lines: _Lines) -> None:

@@ -7,6 +7,7 @@ response: an arrow from the symbol, to the lower left for the right ear, to the 
 memory, unverified). Whether the test was masked is not in the files; the symbols say "unmasked" by convention only.
 """
 
+import itertools
 import math
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
@@ -27,6 +28,7 @@ _LONG = {
 }
 _INK = "fill:var(--jp-ui-font-color1,#222)"
 _SOFT_INK = "fill:var(--jp-ui-font-color2,#555)"
+_GRID = "stroke:var(--jp-border-color2,#ccc);stroke-width:1"
 _GROUND = "var(--jp-layout-color1,#fff)"
 _EAR_COLOUR = {"right": "var(--ak-right,#b3121f)", "left": "var(--ak-left,#00509d)"}
 
@@ -110,8 +112,8 @@ def draw_audiogram(ear: str, curves: Sequence[Curve], marked_hz: Sequence[int] =
     """
     cells = [cell for curve in curves for cell in curve.cells]
     axes = _Axes.around(cells)
-    absent = _absent_letters(axes, curves)
-    key_top = axes.bottom + (42 if absent else 18)
+    absent, absent_height = _absent_letters(axes, curves)
+    key_top = axes.bottom + 18 + absent_height
     key = _key(ear, curves, key_top, any(cell.response == Response.NO_RESPONSE for cell in cells))
     height = key_top + 17 * key.count('class="ak-key"') + 2
     width = axes.right + _RIGHT
@@ -144,31 +146,47 @@ def _text(x: float, y: float, content: str, style: str, anchor: str = "middle", 
 
 
 def _frame(ear: str, axes: _Axes, tested_hz: Iterable[int], marked_hz: Sequence[int]) -> str:
-    grid = "stroke:var(--jp-border-color2,#ccc);stroke-width:1"
-    parts = [_text(_LEFT - 40, 14, f"{ear.capitalize()} ear", f"{_INK};font-weight:600", "start", 14)]
-    parts.append(_text(axes.right, 14, "Frequency, Hz", _SOFT_INK, "end"))
+    title = _text(_LEFT - 40, 14, f"{ear.capitalize()} ear", f"{_INK};font-weight:600", "start", 14)
+    return f'<g aria-hidden="true">{title}{_frequencies(axes, tested_hz, marked_hz)}{_levels(axes)}</g>'
+
+
+def _frequencies(axes: _Axes, tested_hz: Iterable[int], marked_hz: Sequence[int]) -> str:
+    """Octaves on a row of their own; those between them below, where there is room for their names."""
     octaves = [hz for hz in _OCTAVES_HZ if axes.first_hz <= hz <= axes.last_hz]
-    for hz in sorted({*octaves, *tested_hz}):
-        between = hz not in _OCTAVES_HZ
-        weight = ";font-weight:700" if hz in marked_hz else ""
-        ink = _INK if hz in marked_hz else _SOFT_INK
-        parts.append(
-            _line(axes.x(hz), _TOP, axes.x(hz), axes.bottom, grid + (";stroke-dasharray:2 3" if between else ""))
-        )
-        parts.append(
-            _text(axes.x(hz), _TOP - (6 if between else 20), str(hz), ink + weight, size=10.5 if between else 11)
-        )
+    every = sorted({*octaves, *tested_hz})
+    between = [hz for hz in every if hz not in octaves]
+    rows = dict(zip(between, _stagger([axes.x(hz) for hz in between], 28), strict=True))
+    parts = [_text(axes.right, 14, "Frequency, Hz", _SOFT_INK, "end")]
+    for hz in every:
+        x, dashes = axes.x(hz), ";stroke-dasharray:2 3" if hz in rows else ""
+        parts.append(_line(x, _TOP, x, axes.bottom, _GRID + dashes))
+        style = f"{_INK};font-weight:700" if hz in marked_hz else _SOFT_INK
+        if rows.get(hz, 0) == 0:
+            parts.append(_text(x, _TOP - (6 if hz in rows else 20), str(hz), style, size=10.5 if hz in rows else 11))
+    return "".join(parts)
+
+
+def _levels(axes: _Axes) -> str:
+    parts = []
     for db in range(axes.lowest_db, _HIGHEST + 1, 10):
-        strong = grid.replace("color2", "color1").replace("#ccc", "#999") if db == 0 else grid
-        parts.append(_line(_LEFT, axes.y(db), axes.right, axes.y(db), strong))
+        style = "stroke:var(--jp-border-color1,#999);stroke-width:1" if db == 0 else _GRID
+        parts.append(_line(_LEFT, axes.y(db), axes.right, axes.y(db), style))
         if db % 20 == 0:
             parts.append(_text(_LEFT - 6, axes.y(db) + 4, str(db).replace("-", "−"), _SOFT_INK, "end"))
     middle = (axes.y(axes.lowest_db) + axes.bottom) / 2
-    parts.append(
-        f'<text transform="translate(11 {middle:g}) rotate(-90)" text-anchor="middle" font-size="11" '
-        f'style="{_SOFT_INK}">Hearing level, dB HL</text>'
-    )
-    return f'<g aria-hidden="true">{"".join(parts)}</g>'
+    place = f'transform="translate(11 {middle:g}) rotate(-90)" text-anchor="middle" font-size="11"'
+    return "".join(parts) + f'<text {place} style="{_SOFT_INK}">Hearing level, dB HL</text>'
+
+
+def _stagger(places: Sequence[float], gap: float) -> list[int]:
+    """For texts at ascending places the first row in which each stands clear of the one before it."""
+    rows: list[int] = []
+    ends: list[float] = []
+    for x in places:
+        row = next((n for n, end in enumerate(ends) if x - end >= gap), len(ends))
+        ends[row : row + 1] = [x]
+        rows.append(row)
+    return rows
 
 
 def _stroke(ear: str, name: str) -> str:
@@ -202,7 +220,8 @@ def _arrow(ear: str, name: str, x: float, y: float) -> str:
 
 def _curve(ear: str, curve: Curve, axes: _Axes) -> str:
     lines, points = [], []
-    for before, after in zip(curve.cells, curve.cells[1:], strict=False):
+    recorded = [cell for cell in curve.cells if cell.response != Response.NOT_RECORDED]
+    for before, after in itertools.pairwise(recorded):
         if before.response == after.response == Response.MEASURED:
             ends = (axes.x(before.hz), axes.y(before.tenths / 10), axes.x(after.hz), axes.y(after.tenths / 10))
             lines.append(_line(*ends, _stroke(ear, curve.name) + _dots(curve.name)))
@@ -220,13 +239,15 @@ def _curve(ear: str, curve: Curve, axes: _Axes) -> str:
     return f'<g class="ak-{curve.name}"><g aria-hidden="true">{"".join(lines)}</g>{"".join(points)}</g>'
 
 
-def _absent_letters(axes: _Axes, curves: Sequence[Curve]) -> str:
-    """Under the axis: what stands in the current test's cells without a level."""
+def _absent_letters(axes: _Axes, curves: Sequence[Curve]) -> tuple[str, float]:
+    """Under the axis: what stands in the current test's cells without a level; and the height that takes."""
     cells = [cell for curve in curves if curve.name == "current" for cell in curve.cells if not cell.drawn]
-    return "".join(
-        _text(axes.x(cell.hz), axes.bottom + (13 if cell.hz in _OCTAVES_HZ else 25), cell.short(), _INK, size=10)
-        for cell in cells
+    rows = _stagger([axes.x(cell.hz) for cell in cells], 28)
+    letters = (
+        _text(axes.x(cell.hz), axes.bottom + 13 + 12 * row, cell.short(), _INK, size=10)
+        for cell, row in zip(cells, rows, strict=True)
     )
+    return "".join(letters), 12.0 * (max(rows, default=-1) + 1)
 
 
 def _key(ear: str, curves: Sequence[Curve], y: float, with_arrow: bool) -> str:

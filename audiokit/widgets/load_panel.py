@@ -31,10 +31,14 @@ class LoadPanel(widgets.VBox):
         self._base, self._on_start, self._on_loaded = base, on_start, on_loaded
         folders = cohort_folders(base)
         first = first_choice(folders) if cohort is None else str(cohort)
+        if first and (base / first).is_relative_to(base):
+            first = (base / first).relative_to(base).as_posix()
         listed = list(dict.fromkeys([*([first] if first else []), *folders]))
-        options = [(Path(name).name if Path(name).is_absolute() else name, name) for name in listed]
         self.folder = widgets.Dropdown(
-            options=[*options, (ANOTHER, "")], value=first, description="Cohort", style=_OWN_WIDTH
+            options=[*((name, name) for name in listed), (ANOTHER, "")],
+            value=first,
+            description="Cohort",
+            style=_OWN_WIDTH,
         )
         self.other = widgets.Text(
             description="Folder", placeholder="path of a cohort folder", style=_OWN_WIDTH, continuous_update=False

@@ -1,5 +1,6 @@
 """One look for every panel: the stylesheet, the words for codes, and the small pieces of HTML they are shown in."""
 
+import re
 from collections.abc import Iterable, Mapping, Sequence
 from html import escape
 from pathlib import Path
@@ -8,8 +9,8 @@ import anywidget
 
 STATIC = Path(__file__).parent / "static"
 
-UNSEEN = "–"
-"""Stands in a table where nothing was recorded."""
+_TAG = re.compile(r"<[^>]*>")
+_SHORT = 16
 
 MET_WORDS = {"yes": "● met", "no": "○ not met", "unknown": "? cannot tell"}
 """Symbol and word for the three answers, so that none depends on colour."""
@@ -67,9 +68,14 @@ def table(
 
 
 def _cells(row: Sequence[str], sides: Sequence[str]) -> str:
-    first = f'<th scope="row" class="ak-{sides[0]}">{row[0]}</th>'
-    rest = (f'<td class="ak-{side}">{cell}</td>' for cell, side in zip(row[1:], sides[1:], strict=True))
+    first = f'<th scope="row" class="ak-{sides[0]}{_short(row[0])}">{row[0]}</th>'
+    rest = (f'<td class="ak-{side}{_short(cell)}">{cell}</td>' for cell, side in zip(row[1:], sides[1:], strict=True))
     return first + "".join(rest)
+
+
+def _short(cell: str) -> str:
+    """Short texts are not broken over lines."""
+    return " ak-short" if len(_TAG.sub("", cell)) <= _SHORT else ""
 
 
 def status(message: str, mend: str = "", kind: str = "note") -> str:

@@ -38,6 +38,7 @@ class PersonPanel(widgets.VBox):
         self._lookup: ReviewLookup | None = None
         self._person, self._tests = "", list[TestLine]()
         self._shifts = pd.DataFrame()
+        self._frequencies: tuple[int, ...] = ()
         self._setting = False
         self.spot = Spot(lead="Person", name="")
         self.asked = widgets.Text(
@@ -102,7 +103,7 @@ class PersonPanel(widgets.VBox):
 
     def _fill(self, lookup: ReviewLookup, person_id: str, row: int, wanted: tuple[str, str]) -> None:
         self._person, self._tests = person_id, lookup.tests(row)
-        self._shifts = lookup.shifts(row)
+        self._shifts, self._frequencies = lookup.shifts(row), lookup.frequencies(row)
         self.spot.name = person_id
         self.facts.value = facts(lookup.facts(row))
         self.told.value = status(
@@ -165,11 +166,13 @@ class PersonPanel(widgets.VBox):
         by_id = {other.test_id: other for other in self._tests}
         blocks = []
         for ear, view in self.audiograms.items():
-            current = Curve("current", test.test_id, test.tested_on, self._lookup.cells(test, ear))
+            current = Curve("current", test.test_id, test.tested_on, self._lookup.cells(test, ear, self._frequencies))
             curves, row = [current], rows.get((criterion_id, ear))
             if row is not None:
                 base = by_id[str(row["baseline_test_id"])]
-                curves.append(Curve("baseline", base.test_id, base.tested_on, self._lookup.cells(base, ear)))
+                curves.append(
+                    Curve("baseline", base.test_id, base.tested_on, self._lookup.cells(base, ear, self._frequencies))
+                )
                 blocks.append(arithmetic_block(ear, criteria[criterion_id], row, curves[0].cells, curves[1].cells))
             view.show(curves, criteria[criterion_id].frequencies_hz.value)
         self.verdicts.value = verdict_table(criteria, rows) if rows else ""

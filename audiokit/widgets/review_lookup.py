@@ -11,7 +11,6 @@ import pyarrow.compute as pc
 
 from audiokit.core.dates import to_date
 from audiokit.core.vocabulary import EARS, Purpose, Response
-from audiokit.model.grid import ThresholdGrid
 from audiokit.reports.shifts import shifts_table
 from audiokit.reports.tables import baselines_table, events_table, to_frame
 from audiokit.rules.spec import Criterion
@@ -103,9 +102,26 @@ class ReviewLookup:
         """A person's rows of the shifts table: a row per compared test, ear and criterion."""
         return to_frame(shifts_table(self.review, slice(row, row + 1)))
 
-    def cells(self, test: TestLine, ear: str) -> tuple[Cell, ...]:
-        """The cells of one ear of a test, as recorded, in order of frequency."""
-        return _cells(self.review.cohort.grid, test.index, EARS.index(ear))
+    def frequencies(self, row: int) -> tuple[int, ...]:
+        """The frequencies recorded in any of a person's tests, and those that a criterion takes its mean of. [Hz]"""
+        grid = self.review.cohort.grid
+        own = grid.response[:, :, int(grid.first[row]) : int(grid.first[row + 1])] != Response.NOT_RECORDED
+        recorded = {hz for hz, seen in zip(grid.frequencies_hz, own.any(axis=(0, 2)), strict=True) if seen}
+        asked = {hz for criterion in self.criteria().values() for hz in criterion.frequencies_hz.value}
+        return tuple(sorted(recorded | asked))
+
+    def cells(self, test: TestLine, ear: str, frequencies_hz: tuple[int, ...]) -> tuple[Cell, ...]:
+        """The cells of one ear of a test, as recorded, at some frequencies; not recorded where the files have none."""
+        grid, side = self.review.cohort.grid, EARS.index(ear)
+        cells = []
+        for hz in frequencies_hz:
+            if hz in grid.frequencies_hz:
+                at = grid.frequencies_hz.index(hz)
+                level, response = grid.threshold[side, at, test.index], grid.response[side, at, test.index]
+                cells.append(Cell(hz, int(level), Response(int(response))))
+            else:
+                cells.append(Cell(hz, 0, Response.NOT_RECORDED))
+        return tuple(cells)
 
     def criteria(self) -> dict[str, Criterion]:
         """Every criterion of the review's rulebooks by its id, in the rulebooks' order."""
@@ -147,11 +163,6 @@ class ReviewLookup:
         ids = self.review.cohort.people.person_id
         at = pc.index_in(pa.array(person_ids.tolist(), type=pa.string()), value_set=ids).to_numpy(zero_copy_only=False)
         return pd.Series(column.to_numpy(dtype=object)[at.astype(np.int64)], index=person_ids.index)
-
-
-def _cells(grid: ThresholdGrid, index: int, ear: int) -> tuple[Cell, ...]:
-    columns = zip(grid.frequencies_hz, grid.threshold[ear, :, index], grid.response[ear, :, index], strict=True)
-    return tuple(Cell(hz, int(tenths), Response(int(response))) for hz, tenths, response in columns)
 
 
 def _rows_of(table: pa.Table, person_id: str) -> pd.DataFrame:

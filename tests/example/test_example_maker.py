@@ -93,7 +93,8 @@ def test_every_site_has_its_layout(made):
 def test_decisions_stand_in_order_of_time_and_include_an_undo(made):
     log = read_log(made)
     assert log["recorded_at"].is_monotonic_increasing
-    assert set(log["kind"]) == {"revise_baseline", "invalidate_test", "not_work_related", "note", "undo"}
+    kinds = {"revise_baseline", "invalidate_test", "not_work_related", "note", "undo", "notice_given", "entry_made"}
+    assert set(log["kind"]) == kinds
     assert (~log["in_force"]).sum() == 1
 
 

@@ -134,7 +134,7 @@ def test_incomplete_or_wrong_entries_are_refused(tmp_path, fields, said):
 
 
 def test_kinds_of_the_contract():
-    assert set(KINDS) == {"invalidate_test", "revise_baseline", "not_work_related", "note", "undo"}
+    assert {"invalidate_test", "revise_baseline", "not_work_related", "note", "undo"} <= set(KINDS)
 
 
 def test_folder_that_is_not_there(tmp_path):

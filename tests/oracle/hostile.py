@@ -79,10 +79,11 @@ def make_ids(rng: random.Random, count: int) -> list[str]:
     """Distinct ids in one of several styles, in a shuffled order, the tricky ones among them."""
     style = rng.randrange(4)
     tricky = rng.sample(TRICKY_IDS, min(len(TRICKY_IDS), max(1, count // 3)))
-    plain = [
-        f"{n}" if style == 0 else f"P{n:04d}" if style == 1 else f"{n * 7919 % 2147483647:x}"
-        for n in range(11, 11 + count)
-    ]
+    plain = [str(number) for number in range(11, 11 + count)]
+    if style == 1:
+        plain = [f"P{number:04d}" for number in range(count)]
+    if style == 2:
+        plain = [f"{number * 7919 % 2147483647:x}" for number in range(count)]
     if style == 3:
         plain = [str(number) for number in range(11, 11 + count)]
     if style == 1:

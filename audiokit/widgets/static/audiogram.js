@@ -28,6 +28,7 @@ function wire(el) {
 
 function render({ model, el }) {
   el.classList.add("ak-root", "ak-audiogram-view");
+  el.dataset.lmSuppressShortcuts = "true"; // Enter and arrow keys are ours here, not the notebook's.
   const draw = () => {
     el.innerHTML = model.get("svg");
     const readout = document.createElement("p");

@@ -24,7 +24,7 @@ function bodyRow(row, view, model) {
   const cells = row.cells.map((text, at) => {
     const column = view.columns[at];
     const strong = column.emphasis.includes(text) ? " ak-strong" : "";
-    const short = text.length <= 16 ? " ak-short" : "";
+    const short = text.length <= 16 ? " ak-short" : ""; // as `look.py` has it
     const known = at === 0 ? { scope: "row" } : {};
     return make(at === 0 ? "th" : "td", { ...known, class: `ak-${column.align}${strong}${short}` }, isolated(text));
   });
@@ -94,6 +94,7 @@ function draw(model, el) {
 
 function render({ model, el }) {
   el.classList.add("ak-root", "ak-paged-table");
+  el.dataset.lmSuppressShortcuts = "true"; // Enter and arrow keys are ours here, not the notebook's.
   const redraw = () => draw(model, el);
   const told = (message) => {
     if (message.do === "focus") {
