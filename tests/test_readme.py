@@ -14,6 +14,7 @@ import pytest
 from audiokit.cli.main import main
 from audiokit.core.errors import CohortError
 from audiokit.io.columns import OPTIONAL_TEST_COLUMNS, THRESHOLD_COLUMNS
+from audiokit.io.decisions import KINDS
 from audiokit.io.settings import read_plan
 from audiokit.reports.folder import FILES
 from audiokit.surveillance.events import OUTCOMES
@@ -76,7 +77,7 @@ def test_picture_and_links_exist() -> None:
 
 @pytest.fixture(scope="module")
 def printed(tmp_path_factory: pytest.TempPathFactory) -> Iterator[dict[str, Any]]:
-    """Every command of the README but the two that set up, run in order on the files that the README prints."""
+    """Every command of the README but the two that set up, and its Python, run in order on the files that it prints."""
     folder = tmp_path_factory.mktemp("readme")
     shutil.copytree(ROOT / "example_cohort", folder / "example_cohort")
     codes = {}
@@ -86,6 +87,8 @@ def printed(tmp_path_factory: pytest.TempPathFactory) -> Iterator[dict[str, Any]
             if block["file"]:
                 (folder / block["file"]).parent.mkdir(exist_ok=True)
                 (folder / block["file"]).write_text(block["text"], encoding="utf-8")
+            if block["kind"] == "python":
+                exec(compile(block["text"], "README.md", "exec"), {})
             for line in block["text"].splitlines() if block["kind"] == "sh" else ():
                 if line not in _set_up_commands():
                     assert line.startswith(_PROGRAM), line
@@ -125,6 +128,10 @@ def test_output_files_and_columns_are_all_told(printed: dict[str, Any]) -> None:
     told = [name for row in _rows("How to read shifts.csv") for name in _names(row[0])]
     assert told == list(_table(printed["folder"] / "my_review" / "shifts.csv")[0])
     assert [_names(row[0])[0] for row in _rows("How to read events.csv")] == list(OUTCOMES)
+
+
+def test_kinds_of_decision_are_all_told() -> None:
+    assert sorted(_names(row[0])[0] for row in _rows("Decisions of reviewers")) == sorted(KINDS)
 
 
 def _accepted(folder: Path, toml: str) -> list[str]:

@@ -13,7 +13,14 @@ from audiokit.io.raw import RawTable
 from audiokit.io.texts import is_readable_type, is_text_type
 
 
-def _check_types(schema: pa.Schema, file: str) -> None:
+def _check_schema(schema: pa.Schema, file: str) -> None:
+    for place, name in enumerate(schema.names):
+        if name in schema.names[:place]:
+            first = schema.names.index(name) + 1
+            raise CohortError(
+                f"{file}: columns {first} and {place + 1} have the same heading {name!r}",
+                "give every column its own heading",
+            )
     for field in schema:
         kind = field.type.value_type if types.is_dictionary(field.type) else field.type
         if not is_readable_type(kind):
@@ -31,7 +38,7 @@ def read_parquet(data: bytes, file: str, *, all_different: Collection[str] = ())
     """
     try:
         schema = pyarrow.parquet.read_schema(pa.BufferReader(data))
-        _check_types(schema, file)
+        _check_schema(schema, file)
         texts = [field.name for field in schema if is_text_type(field.type) and field.name not in all_different]
         table = pyarrow.parquet.read_table(pa.BufferReader(data), read_dictionary=texts)
     except (pa.ArrowException, OSError) as error:

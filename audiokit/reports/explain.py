@@ -1,13 +1,14 @@
 """The arithmetic of a shift in words: from the thresholds to the verdict, with the clauses."""
 
 from collections.abc import Callable
+from functools import cache
 
 import numpy as np
 
 from audiokit.core.vocabulary import Bound, Met, Response
 from audiokit.measures.sums import MISSING, OPEN, Sums
 from audiokit.reports.numbers import Numbers, Rows, quotient_text, tenths_text
-from audiokit.reports.text_rows import Piece, Row, date_texts, inside_quotes, lookup, side_by_side, texts
+from audiokit.reports.text_rows import Piece, Row, date_texts, inside_quotes, lookup, side_by_side
 from audiokit.rules.spec import Criterion, tenths
 from audiokit.surveillance.review import BookReview, Review
 
@@ -18,34 +19,51 @@ _STATES = {
     Response.NOT_RECORDED: "not recorded",
 }
 
+_NO_CORRECTION = -1000
 
-def shift_words(
-    book: BookReview, name: str, rows: Rows, numbers: Numbers, names: Piece, sums: Piece, tests: slice
-) -> Row:
-    """The pieces of one criterion's `why`.
+Words = Callable[[int], str]
 
-    names, sums : `test_names` and `sum_words` of every test of the stretch      tests : the stretch
-    """
-    criterion = book.findings[name].criterion
-    stretch = tests.stop - tests.start
-    now = rows.ear * stretch + (rows.test - tests.start)
-    base = rows.ear * stretch + (numbers.base - tests.start)
-    pieces: list[Piece | str] = [
-        f"{criterion.shift_at_least_db.at}: sum at {'+'.join(map(str, criterion.frequencies_hz.value))} Hz ",
-        sums.take(now),
-        " less baseline ",
-        names.take(numbers.base - tests.start),
-        sums.take(base),
-    ]
-    corrected = name in book.ages
-    if corrected:
-        pieces.append(_mean_words(numbers))
-        pieces += _age_words(book, name, rows, numbers)
-    pieces.append(_verdict_words(criterion, numbers, corrected))
-    if criterion.level_at_least_db is not None:
-        pieces.append(_level_words(criterion, book.sums[name], rows))
-        pieces.append(Piece(texts(["; both: no", "; both: unknown", "; both: yes"]), numbers.met))
-    return pieces
+
+class Explainer:
+    """Makes one criterion's `why`; each wording is made once per distinct value over all stretches."""
+
+    def __init__(self, book: BookReview, name: str) -> None:
+        self.criterion: Criterion = book.findings[name].criterion
+        self.sums: Sums = book.sums[name]
+        self.ages = book.ages.get(name)
+        count = self.sums.count
+        self._mean = cache(_mean_words(count))
+        self._years = cache(_years_words(self.criterion))
+        self._amount = cache(_amount_words(count))
+        self._verdict = cache(_verdict_words(self.criterion, count, self.ages is not None))
+        self._level = cache(_level_words(self.criterion, count))
+        limit = self.criterion.shift_at_least_db
+        frequencies = "+".join(map(str, self.criterion.frequencies_hz.value))
+        self.opening = f"{limit.at}: sum at {frequencies} Hz "
+
+    def pieces(self, rows: Rows, numbers: Numbers, names: Piece, sums: Piece, tests: slice) -> list[Piece]:
+        """What follows `opening`, piece by piece.
+
+        names, sums : `baseline_names` and `sum_words` of every test of the stretch      tests : the stretch
+        """
+        stretch = tests.stop - tests.start
+        made = [
+            sums.take(rows.ear * stretch + (rows.test - tests.start)),
+            names.take(numbers.base - tests.start),
+            sums.take(rows.ear * stretch + (numbers.base - tests.start)),
+        ]
+        if self.ages is not None:
+            known = self.ages.known[rows.test]
+            years = self.ages.age[numbers.base].astype(np.int32) * 256 + self.ages.age[rows.test]
+            made.append(lookup(self._mean, numbers.shift * 4 + numbers.bound))
+            made.append(lookup(self._years, np.where(known, years, -1)))
+            made.append(lookup(self._amount, np.where(known, numbers.correction, _NO_CORRECTION)))
+        made.append(lookup(self._verdict, numbers.value() * 4 + numbers.bound))
+        if self.criterion.level_at_least_db is not None:
+            total = self.sums.total[rows.ear, rows.test].astype(np.int32)
+            flags = np.minimum(self.sums.flags[rows.ear, rows.test], MISSING)
+            made.append(lookup(self._level, (total * 4 + flags) * 4 + numbers.met))
+        return made
 
 
 def sum_words(review: Review, criterion: Criterion, sums: Sums, tests: slice) -> Piece:
@@ -55,30 +73,34 @@ def sum_words(review: Review, criterion: Criterion, sums: Sums, tests: slice) ->
     """
     grid = review.grid
     pieces: list[Piece | str] = []
-    for hz in criterion.frequencies_hz.value:
-        pieces.append("+")
+    for position, hz in enumerate(criterion.frequencies_hz.value):
+        plus = "+" if position else ""
         if hz in grid.frequencies_hz:
             at = grid.frequencies_hz.index(hz)
             level = grid.threshold[:, at, tests].reshape(-1).astype(np.int32)
             response = grid.response[:, at, tests].reshape(-1)
-            pieces.append(lookup(_cell_text(hz), np.where(response <= 1, level, 0) * 8 + response))
+            measured = response <= Response.NO_RESPONSE
+            pieces.append(lookup(_cell_words(hz, plus), np.where(measured, level, 0) * 8 + response))
         else:
-            pieces.append(f"{hz} Hz not recorded")
+            pieces.append(f"{plus}{hz} Hz not recorded")
     total = sums.total[:, tests].reshape(-1).astype(np.int32)
     pieces.append(lookup(_sum_text, total * 4 + np.minimum(sums.flags[:, tests].reshape(-1), MISSING)))
-    return Piece(side_by_side(pieces[1:]))
+    return Piece(side_by_side(pieces))
 
 
-def _cell_text(hz: int) -> Callable[[int], str]:
+@cache
+def _cell_words(hz: int, plus: str) -> Words:
+    @cache
     def text(code: int) -> str:
         level, response = divmod(code, 8)
         if response in _STATES:
-            return f"{hz} Hz {_STATES[Response(response)]}"
-        return tenths_text(level) if response == Response.MEASURED else f"NR@{tenths_text(level)}"
+            return f"{plus}{hz} Hz {_STATES[Response(response)]}"
+        return f"{plus}{'' if response == Response.MEASURED else 'NR@'}{tenths_text(level)}"
 
     return text
 
 
+@cache
 def _sum_text(code: int) -> str:
     total, flags = divmod(code, 4)
     if flags >= MISSING:
@@ -86,44 +108,47 @@ def _sum_text(code: int) -> str:
     return f"{'>=' if flags == OPEN else '='}{tenths_text(total)}"
 
 
-def test_names(review: Review, tests: slice) -> Piece:
-    """Identifier and date of every test of a stretch, as they stand inside quotes."""
+def baseline_names(review: Review, tests: slice) -> Piece:
+    """How every test of a stretch is named as a baseline, as it stands inside quotes."""
     dates = date_texts(review.grid.day[tests])
-    return Piece(side_by_side([Piece(inside_quotes(review.grid.test_id[tests])), " of ", Piece(dates), " "]))
+    named: Row = [" less baseline ", inside_quotes(review.grid.test_id[tests]), " of ", dates, " "]
+    return Piece(side_by_side(named))
 
 
-def _mean_words(numbers: Numbers) -> Piece:
+def _mean_words(count: int) -> Words:
     def text(code: int) -> str:
         shift, bound = divmod(code, 4)
         if bound == Bound.NONE:
             return "; mean shift not computable"
-        mean = f"{_SIGNS[Bound(bound)]} {quotient_text(shift, 10 * numbers.count)} dB"
-        return f"; mean shift {tenths_text(shift)}/{numbers.count} {mean}"
+        mean = f"{_SIGNS[Bound(bound)]} {quotient_text(shift, 10 * count)} dB"
+        return f"; mean shift {tenths_text(shift)}/{count} {mean}"
 
-    return lookup(text, numbers.shift * 4 + numbers.bound)
+    return text
 
 
-def _age_words(book: BookReview, name: str, rows: Rows, numbers: Numbers) -> list[Piece | str]:
-    ages = book.ages[name]
-    table = book.findings[name].criterion.age_table
-    clause = table.at if table is not None else ""
+def _years_words(criterion: Criterion) -> Words:
+    clause = criterion.age_table.at if criterion.age_table is not None else ""
 
-    def years(code: int) -> str:
+    def text(code: int) -> str:
         if code < 0:
             return "; no age correction (sex or birth not recorded)"
         then, now = divmod(code, 256)
         return f"; age correction for {now} less {then} years ({clause}) "
 
-    def amount(correction: int) -> str:
-        return f"{correction}/{numbers.count} = {quotient_text(correction, numbers.count)} dB"
-
-    known = ages.known[rows.test]
-    code = np.where(known, ages.age[numbers.base].astype(np.int32) * 256 + ages.age[rows.test], -1)
-    return [lookup(years, code), lookup(amount, numbers.correction)]
+    return text
 
 
-def _verdict_words(criterion: Criterion, numbers: Numbers, corrected: bool) -> Piece:
-    limit, count = criterion.shift_at_least_db, numbers.count
+def _amount_words(count: int) -> Words:
+    def text(correction: int) -> str:
+        if correction == _NO_CORRECTION:
+            return ""
+        return f"{correction}/{count} = {quotient_text(correction, count)} dB"
+
+    return text
+
+
+def _verdict_words(criterion: Criterion, count: int, corrected: bool) -> Words:
+    limit = criterion.shift_at_least_db
     exact = tenths(limit, count)
 
     def text(code: int) -> str:
@@ -140,22 +165,25 @@ def _verdict_words(criterion: Criterion, numbers: Numbers, corrected: bool) -> P
         compare = {Met.YES: f"at least {limit.value}: yes", Met.NO: f"below {limit.value}: no"}
         return f"; {lead} {shown}, {compare.get(met, f'at least {limit.value}? unknown')}"
 
-    return lookup(text, numbers.value() * 4 + numbers.bound)
+    return text
 
 
-def _level_words(criterion: Criterion, sums: Sums, rows: Rows) -> Piece:
+def _level_words(criterion: Criterion, count: int) -> Words:
     level = criterion.level_at_least_db
-    assert level is not None
-    limit = tenths(level, sums.count)
+    if level is None:
+        return lambda code: ""
+    limit = tenths(level, count)
 
     def text(code: int) -> str:
-        total, flags = divmod(code, 4)
+        rest, met = divmod(code, 4)
+        total, flags = divmod(rest, 4)
+        asked = f"at least {level.value} ({level.at})?"
+        both = f"; both: {('no', 'unknown', 'yes')[met]}"
         if flags >= MISSING:
-            return f"; mean level not computable, at least {level.value} ({level.at})? unknown"
+            return f"; mean level not computable, {asked} unknown{both}"
         open_ = flags == OPEN
         answer = "yes" if total >= limit else "unknown" if open_ else "no"
-        mean = f"{'>=' if open_ else '='} {quotient_text(total, 10 * sums.count)} dB"
-        return f"; mean level {tenths_text(total)}/{sums.count} {mean}, at least {level.value} ({level.at})? {answer}"
+        mean = f"{'>=' if open_ else '='} {quotient_text(total, 10 * count)} dB"
+        return f"; mean level {tenths_text(total)}/{count} {mean}, {asked} {answer}{both}"
 
-    total = sums.total[rows.ear, rows.test].astype(np.int32)
-    return lookup(text, total * 4 + np.minimum(sums.flags[rows.ear, rows.test], MISSING))
+    return text

@@ -12,7 +12,7 @@ import pyarrow as pa
 import pyarrow.csv
 
 from audiokit.io.atomic import replace_folder
-from audiokit.reports.shifts import HEADER, output_order, shift_blocks, shift_lines
+from audiokit.reports.shifts import HEADER, ShiftLines
 from audiokit.reports.summary import summary_page
 from audiokit.reports.tables import baselines_table, events_table
 from audiokit.surveillance.quality import quality_table
@@ -74,20 +74,20 @@ def _write_table(table: pa.Table, path: Path) -> None:
 
 
 def _write_shifts(review: Review, path: Path, progress: Progress | None) -> None:
-    order, blocks = output_order(review), shift_blocks(review)
+    lines = ShiftLines(review)
     with path.open("wb") as file:
         file.write(HEADER)
-        for number, lines in enumerate(_in_order(lambda block: shift_lines(review, order, block), blocks), start=1):
-            file.write(lines)
+        for number, part in enumerate(_in_order(lines.of, lines.stretches), start=1):
+            file.write(part)
             if progress is not None:
-                progress("writing shifts", number, len(blocks))
+                progress("writing shifts", number, len(lines.stretches))
 
 
-def _in_order(make: Callable[[slice], memoryview], blocks: list[slice], workers: int = 2) -> Iterator[memoryview]:
-    """Results of `make` in order, only a few blocks ahead of the writer, so that memory stays flat."""
+def _in_order(make: Callable[[slice], memoryview], stretches: list[slice], workers: int = 2) -> Iterator[memoryview]:
+    """Results of `make` in order, only a few ahead of the writer, so that memory stays flat."""
     with ThreadPoolExecutor(max_workers=workers) as pool:
-        ahead = deque(pool.submit(make, block) for block in blocks[: workers + 1])
-        for following in [*blocks[workers + 1 :], *[None] * min(len(blocks), workers + 1)]:
+        ahead = deque(pool.submit(make, stretch) for stretch in stretches[: workers + 1])
+        for following in [*stretches[workers + 1 :], *[None] * len(ahead)]:
             yield ahead.popleft().result()
             if following is not None:
                 ahead.append(pool.submit(make, following))

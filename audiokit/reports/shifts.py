@@ -1,18 +1,19 @@
 """The shifts table: one row per criterion, compared test and ear, with the arithmetic in words."""
 
 import io
+from functools import cache
 
 import numpy as np
 import pyarrow as pa
-import pyarrow.compute as pc
 import pyarrow.csv
 from numpy.typing import NDArray
 
 from audiokit.core.vocabulary import EARS, Bound
-from audiokit.reports.explain import shift_words, sum_words, test_names
+from audiokit.reports.explain import Explainer, Words, baseline_names, sum_words
 from audiokit.reports.numbers import Numbers, Rows, numbers_of, quotient_text
-from audiokit.reports.text_rows import Piece, Row, content, csv_field, date_texts, lookup, side_by_side, texts
+from audiokit.reports.text_rows import Piece, content, csv_field, date_texts, lookup, side_by_side, texts
 from audiokit.surveillance.block import stretches
+from audiokit.surveillance.ordering import order_by
 from audiokit.surveillance.review import BookReview, Review
 
 BLOCK_TESTS = 1 << 14
@@ -43,88 +44,84 @@ HEADER = (",".join(SCHEMA.names) + "\n").encode()
 
 def output_order(review: Review) -> NDArray[np.int64]:
     """The tests by person, date and test_id as text; differs from the order of time only within one day."""
-    day, person = review.grid.day, review.grid.person
-    order = np.arange(len(day))
-    same = (day[1:] == day[:-1]) & (person[1:] == person[:-1])
-    tied = np.zeros(len(day), dtype=bool)
-    tied[1:] |= same
-    tied[:-1] |= same
-    at = np.flatnonzero(tied)
-    if len(at):
-        rank = np.empty(len(at), dtype=np.int64)
-        rank[pc.sort_indices(review.grid.test_id.take(pa.array(at))).to_numpy()] = np.arange(len(at))
-        order[at] = at[np.lexsort((rank, day[at], person[at]))]
-    return order
+    return order_by((review.grid.person, review.grid.day), review.grid.test_id, ready=True)
 
 
-def shift_blocks(review: Review) -> list[slice]:
-    """Stretches of consecutive people whose rows are made together."""
-    return stretches(review.history.first, BLOCK_TESTS)
+class ShiftLines:
+    """Makes the lines of shifts.csv, stretch by stretch of consecutive people; safe to use from several threads."""
+
+    def __init__(self, review: Review) -> None:
+        self.review = review
+        self.stretches = stretches(review.history.first, BLOCK_TESTS)
+        self._order = output_order(review)
+        books = {name: book for book in review.books for name in book.findings}
+        self._criteria = [_CriterionFields(books[name], name) for name in sorted(books)]
+
+    def of(self, people: slice) -> memoryview:
+        """The lines of a stretch of people, without the header, as UTF-8 bytes."""
+        review, grid = self.review, self.review.grid
+        tests = slice(int(review.history.first[people.start]), int(review.history.first[people.stop]))
+        compared = self._order[tests]
+        compared = compared[~review.history.before[compared]].astype(np.int32)
+        rows = Rows(np.repeat(compared, 2), np.tile(np.array([0, 1]), len(compared)))
+        identifiers = csv_field(grid.test_id[tests])
+        persons = csv_field(review.cohort.people.person_id.take(pa.array(grid.person[tests])))
+        heads = Piece(side_by_side([persons, ",", identifiers, ",", date_texts(grid.day[tests]), ","]))
+        references = Piece(side_by_side([identifiers, ","]))
+        names = baseline_names(review, tests)
+        sums: dict[tuple[int, ...], Piece] = {}
+        line: list[Piece | str] = []
+        for fields in self._criteria:
+            explainer = fields.explainer
+            frequencies = tuple(explainer.criterion.frequencies_hz.value)
+            if frequencies not in sums:
+                sums[frequencies] = sum_words(review, explainer.criterion, explainer.sums, tests)
+            numbers = numbers_of(fields.book, explainer.criterion.id, rows)
+            line += [
+                heads.take(rows.test - tests.start),
+                Piece(fields.ears, rows.ear),
+                references.take(numbers.base - tests.start),
+                *fields.numbers(numbers),
+                *explainer.pieces(rows, numbers, names, sums[frequencies], tests),
+                '"\n',
+            ]
+        return content(side_by_side(line))
 
 
-def shift_lines(review: Review, order: NDArray[np.integer], people: slice) -> memoryview:
-    """The lines of shifts.csv of a stretch of people, without the header, as UTF-8 bytes.
+class _CriterionFields:
+    """The fields of one criterion's lines; each text is made once per distinct value."""
 
-    order : `output_order` of the review
-    """
-    tests = slice(int(review.history.first[people.start]), int(review.history.first[people.stop]))
-    compared = order[tests]
-    compared = compared[~review.history.before[compared]].astype(np.int32)
-    rows = Rows(np.repeat(compared, 2), np.tile(np.array([0, 1]), len(compared)))
-    criteria = sorted(((name, book) for book in review.books for name in book.findings), key=lambda pair: pair[0])
-    stretch = _Stretch(review, tests)
-    line: list[Piece | str] = []
-    for name, book in criteria:
-        line += stretch.line(book, name, rows)
-    return content(side_by_side(line))
+    def __init__(self, book: BookReview, name: str) -> None:
+        self.book = book
+        self.explainer = Explainer(book, name)
+        self.ears = texts([f"{ear},{name}," for ear in EARS])
+        self._db = cache(_db_words(book.sums[name].count))
+        self._correction = cache(_correction_words(book.sums[name].count))
+        opening = f'"{self.explainer.opening}'
+        self._answers = texts([f"{bound},{met},{opening}" for bound in BOUND_TEXTS for met in MET_TEXTS])
 
-
-class _Stretch:
-    """The texts that all lines of a stretch of tests share, each made once per test."""
-
-    def __init__(self, review: Review, tests: slice) -> None:
-        grid = review.grid
-        identifiers = Piece(csv_field(grid.test_id[tests]))
-        persons = Piece(csv_field(review.cohort.people.person_id.take(pa.array(grid.person[tests]))))
-        dates = Piece(date_texts(grid.day[tests]))
-        self.review, self.tests = review, tests
-        self.heads = Piece(side_by_side([persons, ",", identifiers, ",", dates, ","]))
-        self.references = Piece(side_by_side([identifiers, ","]))
-        self.names = test_names(review, tests)
-        self.sums: dict[tuple[int, ...], Piece] = {}
-
-    def line(self, book: BookReview, name: str, rows: Rows) -> Row:
-        """The pieces of one criterion's lines."""
-        criterion = book.findings[name].criterion
-        numbers = numbers_of(book, name, rows)
-        frequencies = tuple(criterion.frequencies_hz.value)
-        if frequencies not in self.sums:
-            self.sums[frequencies] = sum_words(self.review, criterion, book.sums[name], self.tests)
+    def numbers(self, numbers: Numbers) -> list[Piece]:
+        """From measured_db to the opening of `why`."""
+        measured = lookup(self._db, numbers.shift * 4 + numbers.bound)
+        corrected = self.explainer.ages is not None
         return [
-            self.heads.take(rows.test - self.tests.start),
-            Piece(texts([f"{ear},{name}," for ear in EARS]), rows.ear),
-            self.references.take(numbers.base - self.tests.start),
-            *_number_fields(numbers),
-            '"',
-            *shift_words(book, name, rows, numbers, self.names, self.sums[frequencies], self.tests),
-            '"\n',
+            measured,
+            lookup(self._correction, numbers.correction),
+            lookup(self._db, numbers.value() * 4 + numbers.bound) if corrected else measured,
+            Piece(self._answers, numbers.bound * np.int8(len(MET_TEXTS)) + numbers.met),
         ]
 
 
-def _number_fields(numbers: Numbers) -> list[Piece]:
-    count = numbers.count
-
-    def db(code: int) -> str:
+def _db_words(count: int) -> Words:
+    def text(code: int) -> str:
         value, bound = divmod(code, 4)
         return "," if bound == Bound.NONE else f"{quotient_text(value, 10 * count)},"
 
-    bounds = [f"{bound},{met}," for bound in BOUND_TEXTS for met in MET_TEXTS]
-    return [
-        lookup(db, numbers.shift * 4 + numbers.bound),
-        lookup(lambda correction: f"{quotient_text(correction, count)},", numbers.correction),
-        lookup(db, numbers.value() * 4 + numbers.bound),
-        Piece(texts(bounds), numbers.bound * np.int8(len(MET_TEXTS)) + numbers.met),
-    ]
+    return text
+
+
+def _correction_words(count: int) -> Words:
+    return lambda correction: f"{quotient_text(correction, count)},"
 
 
 def shifts_table(review: Review, people: slice | None = None) -> pa.Table:
@@ -132,10 +129,10 @@ def shifts_table(review: Review, people: slice | None = None) -> pa.Table:
 
     people : a stretch of consecutive rows of the people table; default everybody
     """
-    order = output_order(review)
-    blocks = shift_blocks(review) if people is None else [people]
-    lines = HEADER + b"".join(shift_lines(review, order, block) for block in blocks)
+    lines = ShiftLines(review)
+    parts = [lines.of(stretch) for stretch in (lines.stretches if people is None else [people])]
+    whole = HEADER + b"".join(parts)
     options = pyarrow.csv.ConvertOptions(column_types=SCHEMA, strings_can_be_null=True)
     parsing = pyarrow.csv.ParseOptions(newlines_in_values=True)
-    reading = pyarrow.csv.ReadOptions(block_size=len(lines) + 1)
-    return pyarrow.csv.read_csv(io.BytesIO(lines), reading, parsing, options)
+    reading = pyarrow.csv.ReadOptions(block_size=len(whole) + 1)
+    return pyarrow.csv.read_csv(io.BytesIO(whole), reading, parsing, options)

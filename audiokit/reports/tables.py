@@ -8,9 +8,11 @@ from audiokit.core.dates import NO_DATE
 from audiokit.core.vocabulary import EARS
 from audiokit.measures.sums import MISSING
 from audiokit.reports.numbers import Rows, numbers_of, quotient_text
+from audiokit.reports.shifts import output_order
 from audiokit.reports.text_rows import blank_where, choose, date_texts, lookup, side_by_side
 from audiokit.surveillance.baselines import PROPOSED, STATUSES
 from audiokit.surveillance.events import FOUND_AT_RETEST, NO_RETEST, NOT_CONFIRMED, OUTCOMES, RETEST_OPEN
+from audiokit.surveillance.ordering import order_by
 from audiokit.surveillance.review import BookReview, Review
 from audiokit.surveillance.revision import REASONS
 from audiokit.surveillance.worklist import deadlines
@@ -24,14 +26,17 @@ BASELINE_COLUMNS = ("person_id", "ear", "test_id", "in_force_from", "in_force_un
 
 def events_table(review: Review) -> pa.Table:
     """Rows of events.csv: one per criterion, test and ear that met it."""
-    parts = [_events_of(review, book, name) for book in review.books for name in book.findings]
-    table = pa.concat_tables(parts)
-    ear = pa.compute.index_in(table["ear"], value_set=pa.array(EARS))
-    keyed = table.append_column("ear_order", ear)
-    order = pa.compute.sort_indices(
-        keyed, sort_keys=[(key, "ascending") for key in ("person_id", "tested_on", "test_id", "ear_order", "criterion")]
-    )
-    return table.take(order)
+    named = [(book, name) for book in review.books for name in book.findings]
+    if not named:
+        return pa.table({name: pa.array([], type=pa.string()) for name in EVENT_COLUMNS})
+    place = np.empty(len(review.grid), dtype=np.int64)
+    place[output_order(review)] = np.arange(len(review.grid))
+    events = [book.events[name] for book, name in named]
+    ranks = {name: rank for rank, name in enumerate(sorted(name for _, name in named))}
+    rank = np.repeat([ranks[name] for _, name in named], [len(found.test) for found in events])
+    test, ear = (np.concatenate([getattr(found, key) for found in events]) for key in ("test", "ear"))
+    table = pa.concat_tables([_events_of(review, book, name) for book, name in named])
+    return table.take(pa.array(np.lexsort((rank, ear, place[test]))))
 
 
 def _events_of(review: Review, book: BookReview, name: str) -> pa.Table:
@@ -102,11 +107,12 @@ def _event_words(review: Review, book: BookReview, name: str) -> pa.Array:
 
 def baselines_table(review: Review) -> pa.Table:
     """Rows of baselines.csv: the history of each ear's baseline by the revision criterion of each rulebook."""
-    parts = [_baselines_of(review, book) for book in review.books]
-    table = pa.concat_tables(parts)
-    keyed = table.append_column("ear_order", pa.compute.index_in(table["ear"], value_set=pa.array(EARS)))
-    keys = ("person_id", "ear_order", "in_force_from", "test_id", "reason")
-    return table.take(pa.compute.sort_indices(keyed, sort_keys=[(key, "ascending") for key in keys]))
+    kept = [book.baselines for book in review.books]
+    keys = ("person", "ear", "from_day", "test", "reason")
+    person, ear, day, test, reason = (np.concatenate([getattr(entry, key) for entry in kept]) for key in keys)
+    table = pa.concat_tables([_baselines_of(review, book) for book in review.books])
+    texts = side_by_side([review.grid.test_id.take(pa.array(test)), "\t", choose(REASONS, reason)])
+    return table.take(pa.array(order_by((person, ear, day), texts)))
 
 
 def _baselines_of(review: Review, book: BookReview) -> pa.Table:

@@ -4,9 +4,11 @@ from dataclasses import dataclass, field
 
 import numpy as np
 import pandas as pd
+import pyarrow as pa
+import pyarrow.compute as pc
 from numpy.typing import ArrayLike, NDArray
 
-from audiokit.core.dates import NO_DATE, add_months, iso_text
+from audiokit.core.dates import NO_DATE, add_months
 from audiokit.core.vocabulary import EARS, Met
 from audiokit.rules.spec import Rulebook
 from audiokit.surveillance.baselines import IN_FORCE, PROPOSED
@@ -20,40 +22,48 @@ COLUMNS = ("due_on", "overdue", "action", "person_id", "ear", "test_id", "criter
 _CLOSED_BY = {"notify": ("notice_given",), "record": ("entry_made", "not_work_related")}
 """The decisions that take a line off the list, by action."""
 
-_NO_EAR = np.int8(2)
-_EAR_TEXT = np.array([*EARS, ""], dtype=object)
+ACTIONS = ("annual_test", "baseline_test", "notify", "record", "retest", "review_baseline", "review_test")
+
+_NO_EAR = 2
 
 
 @dataclass
 class _Lines:
-    """Columns under construction; texts are made once for all lines of a kind."""
+    """Columns under construction, all whole numbers; texts are kept once and named by their position."""
 
-    parts: list[pd.DataFrame] = field(default_factory=list)
+    parts: list[dict[str, NDArray[np.int32]]] = field(default_factory=list)
+    criteria: list[str] = field(default_factory=list)
+    whys: list[str] = field(default_factory=list)
 
     def add(
         self,
         action: str,
-        person: NDArray[np.int32],
+        person: NDArray[np.integer],
         ear: ArrayLike,
-        test: NDArray[np.int32] | None,
+        test: ArrayLike,
         due: ArrayLike,
         criterion: str,
-        why: ArrayLike,
+        why: str,
     ) -> None:
-        lines = len(person)
+        """Lines of one kind; `ear` and `test` may be _NO_EAR and -1 for all."""
+        self.criteria.append(criterion)
+        self.whys.append(why)
+        kind = len(self.whys) - 1
+        columns = {
+            "due": due,
+            "action": ACTIONS.index(action),
+            "person": person,
+            "ear": ear,
+            "test": test,
+            "kind": kind,
+        }
         self.parts.append(
-            pd.DataFrame(
-                {
-                    "action": np.full(lines, action, dtype=object),
-                    "person": person,
-                    "ear": np.broadcast_to(np.asarray(ear, dtype=np.int8), lines),
-                    "test": np.full(lines, -1) if test is None else test,
-                    "due": np.broadcast_to(np.asarray(due, dtype=np.int32), lines),
-                    "criterion": np.full(lines, criterion, dtype=object),
-                    "why": np.broadcast_to(np.asarray(why, dtype=object), lines),
-                }
-            )
+            {name: np.broadcast_to(np.asarray(column, dtype=np.int32), len(person)) for name, column in columns.items()}
         )
+
+    def columns(self) -> dict[str, NDArray[np.int32]]:
+        """All lines so far."""
+        return {name: np.concatenate([part[name] for part in self.parts]) for name in self.parts[0]}
 
 
 def worklist(review: Review) -> pd.DataFrame:
@@ -66,48 +76,56 @@ def worklist(review: Review) -> pd.DataFrame:
         _event_lines(review, book, lines)
         _review_lines(review, book, lines)
     _schedule_lines(review, review.books[0].rulebook, lines)
-    table = pd.concat(lines.parts, ignore_index=True)
-    table = table[_still_concerned(review, table)]
-    table = _one_line_each(table)
-    people = review.cohort.people.person_id.to_pandas().to_numpy(dtype=object)
-    tests = np.append(review.grid.test_id.to_pandas().to_numpy(dtype=object), "")
-    due = table["due"].to_numpy()
-    overdue = np.where(due < review.as_of_day, "yes", "no").astype(object)
+    columns = lines.columns()
+    keep = _still_concerned(review, columns)
+    columns = {name: column[keep] for name, column in columns.items()}
+    soonest = np.where(columns["due"] == NO_DATE, np.iinfo(np.int32).max, columns["due"])
+    order = np.lexsort(
+        (columns["kind"], columns["test"], columns["ear"], columns["person"], columns["action"], soonest)
+    )
+    columns = {name: column[order] for name, column in columns.items()}
+    return _one_line_each(_as_text(review, lines, columns), columns)
+
+
+def _as_text(review: Review, lines: _Lines, columns: dict[str, NDArray[np.int32]]) -> pd.DataFrame:
+    due, action = columns["due"], columns["action"]
     no_date = due == NO_DATE
-    overdue[no_date] = np.where(table["action"].to_numpy()[no_date] == "baseline_test", "unknown", "no")
-    out = pd.DataFrame(
+    overdue = np.where(no_date, np.where(action == ACTIONS.index("baseline_test"), 2, 0), due < review.as_of_day)
+    tests = pa.concat_arrays([review.grid.test_id, pa.array([""])])
+    dates = pc.strftime(pa.array(np.where(no_date, 0, due)).cast(pa.date32()), format="%Y-%m-%d")
+    table = pa.table(
         {
-            "due_on": iso_text(due),
-            "overdue": overdue,
-            "action": table["action"].to_numpy(),
-            "person_id": people[table["person"]],
-            "ear": _EAR_TEXT[table["ear"].to_numpy()],
-            "test_id": tests[table["test"]],
-            "criterion": table["criterion"].to_numpy(),
-            "why": table["why"].to_numpy(),
+            "due_on": pc.if_else(pa.array(no_date), pa.scalar(""), dates),
+            "overdue": pa.array(["no", "yes", "unknown"]).take(pa.array(overdue)),
+            "action": pa.array(ACTIONS).take(pa.array(action)),
+            "person_id": review.cohort.people.person_id.take(pa.array(columns["person"])),
+            "ear": pa.array([*EARS, ""]).take(pa.array(columns["ear"])),
+            "test_id": tests.take(pa.array(np.where(columns["test"] < 0, len(tests) - 1, columns["test"]))),
+            "criterion": pa.array(lines.criteria, type=pa.string()).take(pa.array(columns["kind"])),
+            "why": pa.array(lines.whys, type=pa.string()).take(pa.array(columns["kind"])),
         }
     )
-    rank = np.where(no_date, np.iinfo(np.int32).max, due)
-    order = out.assign(rank=rank).sort_values(["rank", "action", "person_id", "ear", "test_id"], kind="stable").index
-    return out.loc[order, list(COLUMNS)].reset_index(drop=True)
+    return table.to_pandas()
 
 
-def _still_concerned(review: Review, table: pd.DataFrame) -> NDArray[np.bool_]:
-    left = review.cohort.people.left_day[table["person"].to_numpy()]
+def _still_concerned(review: Review, columns: dict[str, NDArray[np.int32]]) -> NDArray[np.bool_]:
+    left = review.cohort.people.left_day[columns["person"]]
     gone = (left != NO_DATE) & (left <= review.as_of_day)
-    due_before = table["action"].isin(("notify", "record")).to_numpy() & (table["due"].to_numpy() < left)
-    return ~gone | due_before
+    dated = np.isin(columns["action"], [ACTIONS.index("notify"), ACTIONS.index("record")])
+    return ~gone | (dated & (columns["due"] < left))
 
 
-def _one_line_each(table: pd.DataFrame) -> pd.DataFrame:
+def _one_line_each(table: pd.DataFrame, columns: dict[str, NDArray[np.int32]]) -> pd.DataFrame:
     """Two criteria that ask for the same action make one line that names both."""
-    key = ["action", "person", "test", "ear"]
-    twice = table.duplicated(key, keep=False)
-    if not twice.any():
+    key = pd.DataFrame({name: columns[name] for name in ("action", "person", "test", "ear")})
+    again = key.duplicated(keep="first").to_numpy()
+    if not again.any():
         return table
-    several = table[twice].groupby(key, sort=False, as_index=False)
-    merged = several.agg({"due": "min", "criterion": ";".join, "why": " | ".join})
-    return pd.concat((table[~twice], merged), ignore_index=True)
+    twice = key.duplicated(keep=False).to_numpy()
+    both = table[twice].groupby(key[twice].apply(tuple, axis=1), sort=False)
+    joined = both.agg({"criterion": ";".join, "why": " | ".join})
+    table.loc[twice & ~again, ["criterion", "why"]] = joined.to_numpy()
+    return table[~again].reset_index(drop=True)
 
 
 def _event_lines(review: Review, book: BookReview, lines: _Lines) -> None:
@@ -208,16 +226,16 @@ def _schedule_lines(review: Review, rulebook: Rulebook, lines: _Lines) -> None:
     months = schedule.periodic_test_months
     due = add_months(review.history.day[test], months.value)
     why = f"periodic test {months.value} months after the latest one ({months.at})"
-    lines.add("annual_test", people.astype(np.int32), _NO_EAR, test, due, "", why)
+    lines.add("annual_test", people, _NO_EAR, test, due, "", why)
     without = np.flatnonzero(review.history.initial < 0)
     since = review.cohort.people.noise_since_day[without]
     known = since != NO_DATE
     months = schedule.baseline_test_months
     due = np.full(len(without), NO_DATE, dtype=np.int32)
     due[known] = add_months(since[known], months.value)
-    why = np.where(
-        known,
-        f"no valid test yet; baseline within {months.value} months of first exposure ({months.at})",
-        f"no valid test yet; the date of first exposure is not recorded, so no due date can be given ({months.at})",
-    )
-    lines.add("baseline_test", without.astype(np.int32), _NO_EAR, None, due, "", why)
+    for dated, said in (
+        (known, f"baseline within {months.value} months of first exposure"),
+        (~known, "the date of first exposure is not recorded, so no due date can be given"),
+    ):
+        why = f"no valid test yet; {said} ({months.at})"
+        lines.add("baseline_test", without[dated], _NO_EAR, -1, due[dated], "", why)

@@ -51,6 +51,7 @@ class PersonPanel(widgets.VBox):
         self.audiograms = {ear: AudiogramView(ear) for ear in EARS}
         self.verdicts, self.arithmetic = widgets.HTML(), widgets.HTML()
         self.tests = PagedTable(_TESTS, "Tests", on_pick=self.choose_test, empty="no test was accepted")
+        self.tests.add_class("ak-person-tests")
         self.back.on_click(lambda _: on_back())
         self.asked.observe(self._asked, "value")
         self.test.observe(lambda _: self._draw(), "value")

@@ -4,6 +4,7 @@ import datetime
 import decimal
 import io
 
+import numpy as np
 import pyarrow as pa
 import pyarrow.parquet as pq
 import pytest
@@ -55,10 +56,15 @@ def test_types_become_canonical_text(column, texts):
     assert raw.rows.tolist() == [2, 3, 4]
 
 
+def test_two_columns_of_the_same_name_are_refused():
+    data = io.BytesIO()
+    pq.write_table(pa.Table.from_arrays([pa.array([1])] * 3, names=["a", "b", "a"]), data)
+    with pytest.raises(CohortError, match="columns 1 and 3 have the same heading 'a'"):
+        read_parquet(data.getvalue(), "t.parquet")
+
+
 def test_raw_texts_of_some_rows_are_the_same_before_and_after_encoding():
     raw = read_parquet(stored(a=pa.array([1.0, 2.5, None, 4.0])), "t.parquet")
-    import numpy as np
-
     rows = np.array([3, 1])
     before = raw.raw_texts("a", rows).to_pylist()
     raw.encoded("a")

@@ -5,7 +5,8 @@ from dataclasses import dataclass
 from fractions import Fraction
 
 _SHIFT = re.compile(
-    r"^(?P<clause>.+?): sum at (?P<hertz>[\d+]+) Hz (?P<now>.+?) less baseline (?P<base_id>.+) of (?P<base_on>\d{4}-\d\d-\d\d)"
+    r"^(?P<clause>.+?): sum at (?P<hertz>[\d+]+) Hz (?P<now>.+?) less baseline "
+    r"(?P<base_id>.+) of (?P<base_on>\d{4}-\d\d-\d\d)"
     r" (?P<base>.+?)(?P<rest>; .+)$",
     re.DOTALL,
 )
