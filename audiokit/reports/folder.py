@@ -40,7 +40,12 @@ def write_review(review: Review, out: str | Path, progress: Progress | None = No
     """
 
     def fill(folder: Path) -> None:
-        _write_shifts(review, folder / "shifts.csv", progress)
+        with ThreadPoolExecutor(max_workers=1) as beside:
+            others = beside.submit(fill_others, folder)
+            _write_shifts(review, folder / "shifts.csv", progress)
+            others.result()
+
+    def fill_others(folder: Path) -> None:
         _write_table(events_table(review), folder / "events.csv")
         _write_table(baselines_table(review), folder / "baselines.csv")
         _write_frame(review.worklist, folder / "worklist.csv")

@@ -8,7 +8,7 @@ import pandas as pd
 from numpy.typing import NDArray
 
 from audiokit import __version__
-from audiokit.core.dates import add_months, year_month_day
+from audiokit.core.dates import add_months, calendar_number
 from audiokit.core.vocabulary import Met
 from audiokit.surveillance.events import OUTCOMES
 from audiokit.surveillance.review import Review
@@ -19,7 +19,7 @@ def yearly_figures(review: Review) -> pd.DataFrame:
 
     `events` counts the ears whose event stands, `people_with_event` the people who have one.
     """
-    year = year_month_day(review.grid.day)[0]
+    year = calendar_number(review.grid.day) // 10000
     years, which = np.unique(year, return_inverse=True)
     frames = []
     for book in review.books:
@@ -63,7 +63,7 @@ def worklist_figures(review: Review) -> pd.DataFrame:
 
 
 def site_figures(review: Review) -> pd.DataFrame:
-    """Per site, where the people table has one: people, tested in the twelve months up to the review, open and overdue."""
+    """Per site, where the people table has one: people, tested in the last twelve months, open and overdue lines."""
     table = review.cohort.people.table
     if "site" not in table:
         return pd.DataFrame()

@@ -17,7 +17,7 @@ def after(days: int) -> str:
 
 
 def case(name: str, *later, first=15, first_left=0):
-    """A person with a baseline at 0 dB, a test that met sts on FIRST, and later tests (days, right[, left, purpose])."""
+    """A person with a baseline at 0 dB, a test that met sts on FIRST, and later ones (days, right[, left, purpose])."""
     rows = [
         hearing_test(f"{name} base", "2023-02-10", 0, 0, "baseline", name),
         hearing_test(f"{name} first", after(0), first, first_left, "annual", name),
@@ -43,9 +43,8 @@ def test_the_window_is_thirty_days(tmp_path, purpose) -> None:
     days = (0, 1, 29, 30, 31)
     tables = review_rows(tmp_path, [row for day in days for row in case(f"P{day}", (day, 0, 0, purpose))])
     found = {day: outcomes(tables, f"P{day}") for day in days}
-    assert found == dict.fromkeys((0, 1, 29, 30), {("first", "right"): "not_confirmed"}) | {
-        31: {("first", "right"): "no_retest"}
-    }
+    expected = {day: "not_confirmed" if day <= 30 else "no_retest" for day in days}
+    assert found == {day: {("first", "right"): outcome} for day, outcome in expected.items()}
     for day in days:
         event = tables.one("events", person_id=f"P{day}")
         assert event["deciding_test_id"] == (f"P{day} 1" if day <= 30 else f"P{day} first")
@@ -91,7 +90,7 @@ def test_a_periodic_test_breaks_the_run(tmp_path) -> None:
 
 
 def test_retests_of_a_retest_count_from_the_periodic_test(tmp_path) -> None:
-    """Day 40 lies 15 days after the retest of day 25, but not in the window; it is periodic, and has a window itself."""
+    """Day 40 lies 15 days after the retest of day 25, but not in the window: it is periodic, and has its own."""
     tables = review_rows(tmp_path, case("P", (25, 15), (40, 15), (70, 0), (71, 0)))
     assert outcomes(tables, "P") == {("first", "right"): "confirmed", ("2", "right"): "not_confirmed"}
     assert tables.one("events", test_id="P 2")["deciding_test_id"] == "P 3"

@@ -54,7 +54,7 @@ test_row.__test__ = False  # type: ignore[attr-defined]
 
 
 def mixed(folder: Path) -> Path:
-    """Persons of every kind: a shift of exactly 10 dB, no responses, missing cells, no tests, names of other scripts."""
+    """Persons of every kind: exactly 10 dB, no responses, missing cells, no tests, names of other scripts."""
     people = [
         person("A1", site="north"),
         person("A2", site="south"),
