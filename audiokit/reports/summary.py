@@ -45,9 +45,11 @@ def yearly_figures(review: Review) -> pd.DataFrame:
 def _people_per_year(
     review: Review, year: NDArray[np.integer], tests: NDArray[np.integer], years: int
 ) -> NDArray[np.int64]:
-    """How many different people some tests are of, per year."""
-    pairs = np.unique(review.grid.person[tests].astype(np.int64) * max(years, 1) + year[tests])
-    return np.bincount(pairs % max(years, 1), minlength=years)
+    """How many different people some tests are of, per year; tests in their order, so that repeats are neighbours."""
+    person, when = review.grid.person[tests], year[tests]
+    first = np.ones(len(tests), dtype=bool)
+    first[1:] = (person[1:] != person[:-1]) | (when[1:] != when[:-1])
+    return np.bincount(when[first], minlength=years)
 
 
 def worklist_figures(review: Review) -> pd.DataFrame:

@@ -1,5 +1,7 @@
 """Retest runs: which tests belong to the periodic test before them, found for all people at once."""
 
+from collections.abc import Sequence
+
 import numpy as np
 from numpy.typing import NDArray
 
@@ -29,6 +31,14 @@ def find_runs(candidates: Indices, linkable: Mask, day: NDArray[np.int32], windo
     ends = _run_ends(candidates, linkable, day, window_days)
     active = _outermost(candidates, ends)
     return candidates[active], ends[active]
+
+
+def sorted_union(arrays: Sequence[Indices]) -> Indices:
+    """The different values of some ascending arrays, ascending; a merge, where a hash of all values costs far more."""
+    together = np.sort(np.concatenate(arrays), kind="stable")
+    different = np.ones(len(together), dtype=bool)
+    different[1:] = together[1:] != together[:-1]
+    return together[different]
 
 
 def index_ranges(starts: NDArray[np.integer], ends: NDArray[np.integer]) -> tuple[Indices, NDArray[np.int64]]:

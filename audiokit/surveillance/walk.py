@@ -13,7 +13,7 @@ from numpy.typing import NDArray
 from audiokit.core.vocabulary import Met
 from audiokit.measures.shifts import three_valued
 from audiokit.surveillance.block import History, Judged
-from audiokit.surveillance.runs import deciding_retests, find_runs, follows_within, index_ranges
+from audiokit.surveillance.runs import deciding_retests, find_runs, follows_within, index_ranges, sorted_union
 
 Indices = NDArray[np.int32]
 Mask = NDArray[np.bool_]
@@ -157,7 +157,7 @@ def walk(
         found.append(changes)
         _apply(trail, changes, from_row, end)
         since[changes.ear, changes.person] = from_row
-        active = np.unique(changes.person)
+        active = sorted_union([changes.person])
         latest = np.maximum(since[0, active], since[1, active])
         unfinished = latest < end[active]
         active, latest = active[unfinished], latest[unfinished]
@@ -262,7 +262,7 @@ def _link_retests(
     history: History, trail: Trail, view: Round, follows: Mask, opened_by: Indices | None, window_days: int
 ) -> None:
     openers = [*view.yes] if opened_by is None else [*view.yes, opened_by]
-    starts = np.unique(np.concatenate([tests[follows[tests]] for tests in openers]))
+    starts = sorted_union([tests[follows[tests]] for tests in openers])
     starts, ends = find_runs(starts, history.linkable, history.day, window_days)
     retests, lengths = index_ranges(starts + np.int32(1), ends)
     trail.owner[retests] = np.repeat(starts, lengths)

@@ -39,6 +39,7 @@ class IntakePanel(widgets.VBox):
         self.overview.value = f'<div class="ak-columns">{_files(review)}{_problems(review)}</div>'
         self.problem.options = [_ALL, *sorted(self._quarantine["code"].unique())]
         self.file.options = [_ALL, *sorted(self._quarantine["file"].unique())]
+        self.problem.value = self.file.value = _ALL
         self._filter()
 
     def _filter(self) -> None:

@@ -61,6 +61,8 @@ class WorklistPanel(widgets.VBox):
         self.site.layout.display = "" if lookup.column("site") is not None else "none"
         self.action.options = _choices(self._shown["action"], "")
         self.overdue.options = _choices(self._shown["overdue"], "")
+        for control in (self.site, self.action, self.overdue):
+            control.value = _ALL  # Options that are equal to the last ones would keep the last choice.
         self.search.value = ""
         self._setting = False
         self._filter(picked=None)

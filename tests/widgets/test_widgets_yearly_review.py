@@ -267,7 +267,8 @@ class TestSmallCohorts:
         return made
 
     def test_nobody_at_all(self, tmp_path: Path) -> None:
-        made = self._loaded(write(tmp_path / "empty", [], []))
+        """Every row of both tables is in quarantine."""
+        made = self._loaded(write(tmp_path / "empty", [person("B1", sex="?")], [row("B1", "b1", "2024-01-01")]))
         assert made.worklist.lines.view["rows"] == []
         assert made.years.chart.outputs == ()
         assert "No test takes part" in made.years.summary.value
@@ -282,14 +283,14 @@ class TestSmallCohorts:
         assert "initial baseline" in made.person.arithmetic.value
 
     def test_people_without_tests(self, tmp_path: Path) -> None:
-        made = self._loaded(write(tmp_path / "none", [person("B1"), person("B2")], []))
+        made = self._loaded(write(tmp_path / "none", [person("B1"), person("B2")], [row("B3", "b1", "2024-01-01")]))
         assert made.years.chart.outputs == ()
         assert made.choose_person("B2")
         assert "No test of this person was accepted" in made.person.told.value
 
     def test_a_people_table_without_sites_has_no_filter_for_them(self, tmp_path: Path) -> None:
         folder = write(tmp_path / "plain", [person("B1")], [row("B1", "b1", "2023-01-01")])
-        (folder / "people.csv").write_text("person_id,sex\nB1,female\n", encoding="utf-8")
+        (folder / "people.csv").write_text("person_id,sex,birth_year\nB1,female,1980\n", encoding="utf-8")
         made = self._loaded(folder)
         assert made.worklist.site.layout.display == "none"
         assert made.worklist.lines.view["rows"]
@@ -301,7 +302,7 @@ def _inside(widget: widgets.Widget) -> list[widgets.Widget]:
 
 
 def test_every_field_has_a_name_and_nothing_needs_a_mouse(panel: YearlyReview) -> None:
-    """A field's description is its name for a screen reader; accordions are not reached by Tab, sliders have no name."""
+    """A description is the field's name for screen readers; accordions are not reached by Tab, sliders lack a name."""
     parts = _inside(panel)
     fields = [
         part for part in parts if isinstance(part, (widgets.Dropdown, widgets.Text, widgets.DatePicker, widgets.Button))
