@@ -91,9 +91,9 @@ def close_old_lines(folder: Path) -> None:
     kinds = {"notify": "notice_given", "record": "entry_made"}
     old = lines["action"].isin(kinds) & (lines["due_on"] < CLOSED_UNTIL.isoformat())
     old &= ~lines["person_id"].str.startswith("S9") & lines["person_id"].str[0].isin(_REVIEWERS)
-    for line in lines[old].itertuples():
-        reason = "copy in the person's file"
-        _record(folder, _Entry(AS_OF, kinds[line.action], line.person_id, line.test_id, reason, line.ear), None)
+    columns = [lines.loc[old, name].tolist() for name in ("action", "person_id", "test_id", "ear")]
+    for action, person_id, test_id, ear in zip(*columns, strict=True):
+        _record(folder, _Entry(AS_OF, kinds[action], person_id, test_id, "copy in the person's file", ear), None)
 
 
 def _revision_entries(revisions: Revisions, tests: pd.DataFrame) -> list[_Entry]:

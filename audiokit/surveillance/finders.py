@@ -148,7 +148,7 @@ def by_decision(history: History, decisions: BaselineDecisions) -> Finder:
     pending = np.ones(len(decisions.person), dtype=bool)
 
     def find(view: Round, trail: Trail, since: Indices) -> tuple[Changes, Indices]:
-        left = np.flatnonzero(pending)
+        left = np.flatnonzero(pending).astype(np.int32)
         position = _first_slot_after(history, trail, decisions, left)
         soonest = np.full(len(history.initial), _NEVER, dtype=np.int32)
         np.minimum.at(soonest, decisions.person[left], position)
