@@ -57,7 +57,7 @@ def test_job_is_told_before_anything_else() -> None:
 
 def test_one_line_opens_the_workbench_and_one_runs_the_tests() -> None:
     opens, tests = _set_up_commands()
-    assert opens.endswith(" && .venv/bin/audiokit open example_cohort")
+    assert " && .venv/bin/audiokit open example_cohort" in opens
     assert tests.endswith("/pytest") or "/pytest -" in tests
     assert all(" -c .ci/constraints.txt " in line for line in (opens, tests))
 

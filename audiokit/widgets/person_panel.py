@@ -175,6 +175,8 @@ class PersonPanel(widgets.VBox):
                     Curve("baseline", base.test_id, base.tested_on, self._lookup.cells(base, ear, self._frequencies))
                 )
                 blocks.append(arithmetic_block(ear, criteria[criterion_id], row, curves[0].cells, curves[1].cells))
+            elif test.standing == "compared":
+                raise LookupError(f"test {test.test_id} is compared, but its {ear} ear has no shift")
             view.show(curves, criteria[criterion_id].frequencies_hz.value)
         self.verdicts.value = verdict_table(criteria, rows) if rows else ""
         self.arithmetic.value = "".join(blocks) or f'<p class="ak-note">{text(_no_comparison(test))}</p>'

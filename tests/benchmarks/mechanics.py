@@ -2,8 +2,8 @@
 
     python -m tests.benchmarks.mechanics --tests 1000000
 
-Ours: arrays in; verdicts, events and baselines of all criteria out, in both revision modes. Reference: polars joins each
-test to its person's first, age-corrects, averages 2, 3 and 4 kHz of both ears, compares and counts by year.
+Ours: arrays in; verdicts, events and baselines of all criteria out, in both revision modes. Reference: polars joins
+each test to its person's first, age-corrects, averages 2, 3 and 4 kHz of both ears, compares and counts by year.
 """
 
 import argparse

@@ -40,7 +40,8 @@ def write_again(out: Path, scratch: Path) -> float:
     """Seconds that pyarrow's CSV writer takes for the tables of a finished review, read back with their types."""
     seconds = 0.0
     for name in ("shifts", "events", "baselines", "worklist", "quality"):
-        table = pyarrow.csv.read_csv(out / f"{name}.csv", convert_options=pyarrow.csv.ConvertOptions(strings_can_be_null=True))
+        options = pyarrow.csv.ConvertOptions(strings_can_be_null=True)
+        table = pyarrow.csv.read_csv(out / f"{name}.csv", convert_options=options)
         start = time.perf_counter()
         pyarrow.csv.write_csv(table, scratch / f"{name}.csv")
         seconds += time.perf_counter() - start

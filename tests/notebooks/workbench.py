@@ -113,5 +113,8 @@ class Workbench:
     def strangers(self) -> list[str]:
         """Addresses outside this machine that were asked for; data and blob addresses stay inside the page."""
         inside = ("127.0.0.1", "localhost", "::1")
-        return [url for url in self.asked if urlsplit(url).scheme not in ("data", "blob", "about")
-                and urlsplit(url).hostname not in inside]
+        return [
+            url
+            for url in self.asked
+            if urlsplit(url).scheme not in ("data", "blob", "about") and urlsplit(url).hostname not in inside
+        ]

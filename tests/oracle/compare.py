@@ -36,13 +36,18 @@ class ReviewFailed(Exception):
 
 
 def run_review(folder: Path, out: Path) -> None:
-    """Run the command in this process."""
+    """Run `audiokit review` in this process."""
+    run_command(["review", str(folder), "--out", str(out)])
+
+
+def run_command(arguments: list[str]) -> None:
+    """Run `audiokit` with these arguments in this process."""
     from audiokit.cli.main import main
 
     said = io.StringIO()
     with contextlib.redirect_stdout(said), contextlib.redirect_stderr(said):
         try:
-            status = main(["review", str(folder), "--out", str(out)])
+            status = main(arguments)
         except SystemExit as stop:
             status = stop.code  # type: ignore[assignment]
         except Exception:

@@ -2,11 +2,13 @@
 
 import csv
 import datetime as dt
+from dataclasses import replace
 from pathlib import Path
 
 import pytest
 
-from tests.oracle.compare import WORKLIST_COLUMNS, compare_folder, differences, text_of
+from tests.oracle.cohort_files import write_cohort
+from tests.oracle.compare import WORKLIST_COLUMNS, compare_folder, differences, run_command, run_review, text_of
 from tests.oracle.hostile import COMBINATIONS, hostile_cohort
 from tests.oracle.records import Review
 from tests.oracle.scalar_review import review
@@ -21,6 +23,23 @@ def test_no_cell_differs(seed: int, place: int) -> None:
     cohort = hostile_cohort(seed, 30, COMBINATIONS[place])
     problems = differences(cohort, layout=LAYOUTS[seed % 3])
     assert not problems, f"{len(problems)} differences, the first:\n" + "\n".join(problems[:5])
+
+
+@pytest.mark.parametrize("seed", [300, 301])
+def test_invalidated_tests_take_part_in_nothing(seed: int, tmp_path: Path) -> None:
+    """A test that a reviewer invalidated by `audiokit decide` counts like one marked as not valid in the file."""
+    cohort = hostile_cohort(seed, 20)
+    write_cohort(cohort, tmp_path / "cohort")
+    invalidated = {test.test_id: test.person_id for test in cohort.accepted[:8]}
+    for test_id, person_id in invalidated.items():
+        who = ["--reviewer", "R. Invented", "--role", "audiologist", "--reason", "noise in the booth"]
+        run_command(
+            ["decide", str(tmp_path / "cohort"), "invalidate_test", "--person", person_id, "--test", test_id, *who]
+        )
+    run_review(tmp_path / "cohort", tmp_path / "out")
+    left = [replace(test, valid=test.valid and test.test_id not in invalidated) for test in cohort.accepted]
+    assert compare_folder(review(cohort.persons, left, cohort.settings), tmp_path / "out") == []
+    assert compare_folder(review(cohort.persons, cohort.accepted, cohort.settings), tmp_path / "out") != []
 
 
 def write_review(result: Review, folder: Path) -> None:
