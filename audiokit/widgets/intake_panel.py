@@ -28,6 +28,7 @@ class IntakePanel(widgets.VBox):
         self.problem = widgets.Dropdown(options=[_ALL], description="Problem", style={"description_width": "initial"})
         self.file = widgets.Dropdown(options=[_ALL], description="File", style={"description_width": "initial"})
         self.rows = PagedTable(_COLUMNS, "Rows in quarantine", empty="no row is in quarantine")
+        self.rows.add_class("ak-quarantine")
         self._quarantine = pd.DataFrame({column.key: [] for column in _COLUMNS})
         self.problem.observe(lambda _: self._filter(), "value")
         self.file.observe(lambda _: self._filter(), "value")

@@ -36,6 +36,7 @@ class WorklistPanel(widgets.VBox):
         self.overdue = widgets.Dropdown(options=[("all", _ALL)], description="Overdue", **own)
         self.search = widgets.Text(description="Search", placeholder="person, test, reason …", **own)
         self.lines = PagedTable(_COLUMNS, "Worklist", on_pick=self._picked, empty="no line of the worklist fits")
+        self.lines.add_class("ak-worklist")
         self._worklist = pd.DataFrame()
         self._shown = pd.DataFrame({column.key: [] for column in _COLUMNS})
         self._searched = pd.Series(dtype=object)
