@@ -62,8 +62,6 @@ def _table(
     rows: NDArray[np.int64],
     ragged: RaggedRows,
 ) -> RawTable:
-    if not len(rows) and not len(ragged.rows):
-        raise CohortError(f"{file}: there are headings but no rows", "export the table again, with its rows")
     headings, kept = clean_headings(names, columns, file)
     return RawTable(file, headings, kept, rows, ragged)
 

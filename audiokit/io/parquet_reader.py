@@ -45,7 +45,5 @@ def read_parquet(data: bytes, file: str, *, all_different: Collection[str] = ())
         raise CohortError(
             f"{file}: the parquet file is damaged ({str(error).splitlines()[0]})", "export it again"
         ) from None
-    if not len(table):
-        raise CohortError(f"{file}: there are columns but no rows", "export the table again, with its rows")
     headings, columns = clean_headings(table.column_names, table.columns, file)
     return RawTable(file, headings, columns, np.arange(2, len(table) + 2), typed=True)

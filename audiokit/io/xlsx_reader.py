@@ -121,10 +121,8 @@ def read_xlsx(data: bytes, file: str, *, sheet: str | None = None, header_row: i
     head = 0 if header_row is None else numbers.index(header_row) if header_row in numbers else len(rows)
     if head == len(rows):
         raise CohortError(f"{file}: the sheet has no row {header_row or 1} with headings", "correct [sheet] header_row")
-    if head + 1 == len(rows):
-        raise CohortError(f"{file}: there are headings but no rows", "export the table again, with its rows")
     body = rows[head + 1 :]
-    width = max(len(rows[head]), max(len(row) for row in body))
+    width = max(len(rows[head]), max((len(row) for row in body), default=0))
     names = [cell_text(value) for value in rows[head]] + [""] * (width - len(rows[head]))
     headings, columns = clean_headings(names, _columns(body, width), file)
     return RawTable(file, headings, columns, np.asarray(numbers[head + 1 :], np.int64), typed=True)

@@ -41,7 +41,8 @@ def baseline_history(history: History, changes: Changes, proposals: Changes) -> 
     person = np.concatenate((np.repeat(people, 2), changes.person))
     ear = np.concatenate((np.tile(np.array([0, 1], dtype=np.int8), len(people)), changes.ear))
     test = np.concatenate((np.repeat(history.initial[people], 2), changes.test))
-    from_day = np.concatenate((history.day[np.repeat(history.initial[people], 2)], changes.day))
+    started = history.day[history.initial[changes.person]]  # a decision may count from before the initial baseline
+    from_day = np.concatenate((history.day[np.repeat(history.initial[people], 2)], np.maximum(changes.day, started)))
     found_at = np.concatenate((np.full(2 * len(people), -1, dtype=np.int32), changes.found_at))
     reason = np.concatenate((np.full(2 * len(people), INITIAL, dtype=np.int8), changes.reason))
     order = np.lexsort((ear, person))  # stable: within an ear in the order in which they took effect

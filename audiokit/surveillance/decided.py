@@ -11,7 +11,6 @@ from numpy.typing import NDArray
 from audiokit.core.dates import to_days
 from audiokit.core.vocabulary import EARS
 from audiokit.model.grid import People, ThresholdGrid
-from audiokit.surveillance.block import History
 from audiokit.surveillance.finders import BaselineDecisions
 
 _ABSENT = -1
@@ -84,11 +83,11 @@ class DecisionEffect:
 
 
 def baseline_decisions(
-    decisions: pd.DataFrame, grid: ThresholdGrid, people: People, history: History, as_of_day: int, automatic: bool
+    decisions: pd.DataFrame, grid: ThresholdGrid, people: People, as_of_day: int, automatic: bool
 ) -> DecisionEffect:
     """The revise_baseline decisions, as tests of the grid that takes part in the review.
 
-    A decision counts from its day of effect, at the earliest from its test's own day and from the initial baseline's.
+    A decision counts from its day of effect, at the earliest from its test's own day.
     """
     rows = decisions[decisions["kind"] == "revise_baseline"] if len(decisions) else _no_rows()
     person = index_in(people.person_id, rows["person_id"])
@@ -96,7 +95,7 @@ def baseline_decisions(
     named = test >= 0
     day = pd.to_datetime(rows["takes_effect_on"]).map(lambda date: to_days(date.date())).to_numpy(dtype=np.int64)
     if len(grid):
-        day = np.where(named, np.maximum(day, np.maximum(grid.day[test], grid.day[history.initial[person]])), day)
+        day = np.where(named, np.maximum(day, grid.day[test]), day)
     in_time = day <= as_of_day
     why = np.full(len(rows), "", dtype=object)
     why[~in_time] = "takes effect after the date of the review"

@@ -98,8 +98,10 @@ def _block(
     trails: dict[str, Trail],
 ) -> dict[str, tuple[Changes, Changes]]:
     """Judge a stretch of people into the trails. Returns each criterion's changes and proposals."""
-    part = history.part(people)
     tests = slice(int(history.first[people.start]), int(history.first[people.stop]))
+    if tests.start == tests.stop:
+        return {criterion.id: (Changes.none(), Changes.none()) for criterion in rulebook.criteria}
+    part = history.part(people)
     trail_of = {name: trail.part(tests) for name, trail in trails.items()}
     proposals: dict[str, Changes] = {}
     for criterion in rulebook.criteria:
@@ -141,10 +143,12 @@ def _met_in_either_ear(answers: list[NDArray[np.int8]]) -> NDArray[np.int32]:
 def _proposals(
     history: History, judged: Judged, trail: Trail, view: Round, months: int, other: OtherFrequencies
 ) -> Changes:
-    """Every revision the rules would make on the sequences as they are, each distinct one where first revealed."""
+    """Every revision the rules would make on each ear's present sequence, each distinct one where first revealed."""
     found = []
     for ear in (0, 1):
         hits = revision_hits(history, judged, trail, ear, view, months, None)
+        latest = trail.sequence[ear][history.first[1:][history.person[hits.slot]] - 1]
+        hits = hits.where(trail.sequence[ear][hits.slot] == latest)
         new = choose(hits, judged.total[ear], ear, other)
         _, first = np.unique(new.astype(np.int64) * 2 + hits.reason, return_index=True)
         first.sort()

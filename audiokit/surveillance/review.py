@@ -140,7 +140,7 @@ def _review_book(
             ages[criterion.id] = ages_by(criterion.age_table.value, frequencies)
         judged[criterion.id] = _judged(rulebook, criterion, sums[criterion.id], ages.get(criterion.id))
     automatic = settings.baseline_revision == "automatic"
-    decisions = baseline_decisions(cohort.decisions, grid, cohort.people, history, as_of_day, automatic)
+    decisions = baseline_decisions(cohort.decisions, grid, cohort.people, as_of_day, automatic)
     plan = Plan(as_of_day, automatic, settings.recording_baseline == "in_force")
     other = _other_frequencies(grid, rulebook.criterion(rulebook.revision.criterion))
     findings = run_mechanics(rulebook, history, judged, other, decisions.baselines, plan, progress)

@@ -1,6 +1,7 @@
 """A shift's arithmetic as it stands in shifts.csv, line by line, with the cells it starts from in a table above it."""
 
 from collections.abc import Mapping, Sequence
+from html import escape
 from typing import Any
 
 import numpy as np
@@ -78,7 +79,9 @@ def arithmetic_block(
     value = decibels(_number(row["value_db"]), str(row["bound"]))
     corrected = "corrected shift" if row["correction_db"] else "mean shift"
     lines = clauses(str(row["why"]), criterion.shift_at_least_db.at, str(row["baseline_test_id"]))
-    listed = "".join(f"<li>{text(line)}</li>" for line in lines)
+    base = str(row["baseline_test_id"])
+    named = [text(line).replace(escape(base), text(base)) if line.startswith("less ") else text(line) for line in lines]
+    listed = "".join(f"<li>{line}</li>" for line in named)
     return (
         f'<section class="ak-arithmetic" aria-label="{ear} ear, arithmetic">'
         f'<h4 class="ak-verdict ak-{met}">{ear.capitalize()} ear: <b>{MET_WORDS[met]}</b>'

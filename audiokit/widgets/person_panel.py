@@ -66,7 +66,8 @@ class PersonPanel(widgets.VBox):
         charts = widgets.Box(list(self.audiograms.values())).add_class("ak-charts")
         beside = widgets.VBox([self.verdicts, self.arithmetic]).add_class("ak-beside")
         main = widgets.Box([charts, beside]).add_class("ak-columns")
-        return widgets.VBox([self.facts, choices, main, self.tests, self.findings])
+        self._of_tests = widgets.VBox([choices, main, self.tests])
+        return widgets.VBox([self.facts, self._of_tests, self.findings])
 
     @property
     def person_id(self) -> str:
@@ -110,6 +111,7 @@ class PersonPanel(widgets.VBox):
         self.told.value = status(
             "" if self._tests else "No test of this person was accepted, so there is no audiogram."
         )
+        self._of_tests.layout.display = "" if self._tests else "none"
         self._offer(*wanted)
         self.findings.value = findings_html(lookup, person_id)
         self._draw()

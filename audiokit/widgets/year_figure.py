@@ -7,7 +7,12 @@ import pandas as pd
 from audiokit.widgets.look import words
 
 CONFIG: dict[str, Any] = {
+    "showSendToCloud": False,
+    "plotlyServerURL": "",
+    "displaylogo": False,
     "displayModeBar": True,
+    "responsive": False,
+    "modeBarButtonsToRemove": ["sendDataToCloud", "editInChartStudio", "select2d", "lasso2d", "autoScale2d"],
 }
 """Health data stay on the machine: no button of the chart may offer to send them anywhere."""
 

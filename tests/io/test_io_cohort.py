@@ -15,7 +15,6 @@ OLE = b"\xd0\xcf\x11\xe0\xa1\xb1\x1a\xe1" + b"\0" * 600
     ("file", "content", "words"),
     [
         ("tests_csv", b"", ["tests.csv", "empty"]),
-        ("tests_csv", b"person_id,tested_on,right_1000\n", ["tests.csv", "headings but no rows"]),
         ("tests_csv", workbook([["a"], [1]]), ["tests.csv", "Excel workbook", "suffix"]),
         ("tests_csv", OLE, ["password-protected", "without password"]),
         ("tests_csv", b"PAR1....", ["parquet file"]),

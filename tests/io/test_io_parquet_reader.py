@@ -78,7 +78,6 @@ def test_raw_texts_of_some_rows_are_the_same_before_and_after_encoding():
         (stored(a=pa.array(["x"] * 50))[:-20] + b"PAR1", "damaged"),
         (stored(a=pa.array([[1], [2]])), "column 'a' holds list"),
         (stored(a=pa.array([b"x"])), "column 'a' holds binary"),
-        (stored(a=pa.array([], pa.string())), "columns but no rows"),
     ],
 )
 def test_damaged_nested_and_empty_files(data, words):

@@ -52,6 +52,15 @@ def _lines(page: Any) -> Any:
     return page.locator(".ak-worklist tr.ak-pickable").locator("visible=true")
 
 
+def _await_lines(page: Any, words: str) -> None:
+    """Wait until every line shown holds some words."""
+    page.wait_for_function(
+        "words => (rows => rows.length && rows.every(row => row.innerText.includes(words)))"
+        "([...document.querySelectorAll('.ak-worklist tr.ak-pickable')])",
+        arg=words,
+    )
+
+
 def _await_caption(page: Any, words: str) -> None:
     page.locator("caption", has_text=words).first.wait_for()
 
@@ -66,9 +75,7 @@ def test_the_notebook_runs_without_errors_and_shows_the_worklist(bench: Workbenc
 def test_filters_leave_the_lines_they_name(page: Any) -> None:
     page.get_by_label("Site", exact=True).select_option(label=_option(page, "Site", "sawmill"))
     page.get_by_label("Action", exact=True).select_option(label=_option(page, "Action", "annual test"))
-    page.wait_for_function(
-        "[...document.querySelectorAll('.ak-worklist tr.ak-pickable')].every(row => row.innerText.includes('annual test'))"
-    )
+    _await_lines(page, "annual test")
     cells = _lines(page).all_inner_texts()
     assert cells
     assert all("sawmill" in line and "annual test" in line for line in cells)
@@ -86,9 +93,7 @@ def _option(page: Any, field: str, word: str) -> str:
 
 def test_a_click_shows_the_person_with_the_arithmetic(page: Any) -> None:
     _search(page, "S9024")
-    page.wait_for_function(
-        "[...document.querySelectorAll('.ak-worklist tr.ak-pickable')].every(row => row.innerText.includes('S9024'))"
-    )
+    _await_lines(page, "S9024")
     _lines(page).first.click()
     page.locator(".ak-heading", has_text="S9024").wait_for()
     page.locator(".ak-clauses li").first.wait_for()
@@ -203,6 +208,13 @@ def test_a_bad_folder_is_a_message(page: Any) -> None:
     page.locator(".ak-tiles").wait_for()
 
 
+_BAR_NUMBERS = "[...document.querySelectorAll('.bars text')].map(text => text.textContent).join(' ')"
+
+
+def _bar_numbers(page: Any) -> str:
+    return str(page.evaluate(_BAR_NUMBERS))
+
+
 def test_a_saved_and_reloaded_page_shows_what_was_shown_last(bench: Workbench, page: Any) -> None:
     page.get_by_label("Go to person").fill("S9012")
     page.get_by_label("Go to person").press("Enter")
@@ -210,14 +222,16 @@ def test_a_saved_and_reloaded_page_shows_what_was_shown_last(bench: Workbench, p
     _search(page, "S9012")
     _await_caption(page, "Worklist: 1 of")
     page.get_by_role("tab", name="Years").click()
+    first = _bar_numbers(page)
     page.get_by_label("Criterion", exact=True).select_option(label=_option(page, "Criterion", "recordable"))
-    page.locator("p.ak-note", has_text="us-osha.recordable").first.wait_for()
-    before = page.locator(".bars text").all_text_contents()
+    page.wait_for_function(f"{_BAR_NUMBERS} !== {first!r}")
+    before = _bar_numbers(page)
     page.evaluate("jupyterapp.commands.execute('docmanager:save')")
     page.reload()
     page.locator(".ak-review").wait_for(timeout=60_000)
     page.locator(".js-plotly-plot .xtick text").first.wait_for()
-    assert page.locator(".bars text").all_text_contents() == before
+    page.wait_for_function(f"{_BAR_NUMBERS} !== ''")
+    assert _bar_numbers(page) == before != first
     page.get_by_role("tab", name="Worklist and person").click()
     assert page.get_by_role("textbox", name="Search").input_value() == "S9012"
     assert _lines(page).first.inner_text().count("S9012")

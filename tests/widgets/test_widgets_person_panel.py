@@ -110,6 +110,7 @@ def test_a_person_without_tests_is_shown_and_said(panel: YearlyReview) -> None:
     assert panel.choose_person("A4")
     assert "No test of this person was accepted" in panel.person.told.value
     assert panel.person.test.options == ()
+    assert panel.person._of_tests.layout.display == "none"
     assert "&lt;i&gt;sorter" in panel.person.facts.value
     assert panel.person.tests.view["rows"] == []
     assert (
