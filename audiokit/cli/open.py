@@ -98,12 +98,13 @@ def copy_notebooks(folder: Path) -> list[str]:
 
 
 def lab_arguments(folder: Path, port: int | None, no_browser: bool, passed_on: Sequence[str]) -> list[str]:
-    """The arguments JupyterLab is started with. Its token is its own, made anew at each start."""
+    """The arguments JupyterLab is started with: nothing is fetched, and its token is made anew at each start."""
     settings = Path(str(resources.files("audiokit"))) / "widgets" / "lab_settings"
     return [
         f"--ServerApp.root_dir={folder}",
         f"--LabApp.default_url=/doc/tree/{FIRST_NOTEBOOK}",
         f"--LabApp.app_settings_dir={settings}",
+        "--LabApp.extension_manager=readonly",
         *([] if port is None else [f"--ServerApp.port={port}", "--ServerApp.port_retries=0"]),
         *(["--no-browser"] if no_browser else []),
         *([] if any(_last_word(option) == "ip" for option in passed_on) else ["--ServerApp.ip=127.0.0.1"]),

@@ -115,9 +115,9 @@ def read_shared_columns(table: SourceTable, known: KnownPeople) -> SharedColumns
     """The shared columns of a tests table; every problem is noted in the table's log."""
     blank = table.check_blank_rows()
     table.check_ids("person_id", blank)
+    person = _find_people(table, known, blank)
     if table.has("test_id"):
         table.check_ids("test_id", blank)
-    person = _find_people(table, known, blank)
     dates = table.dates("tested_on")
     tested_on = table.column("tested_on")
     if dates.blank.any():

@@ -32,22 +32,35 @@ class Sums:
     flags: NDArray[np.uint8]
     count: int
 
+    @staticmethod
+    def empty(tests: int, count: int) -> "Sums":
+        """Room for so many tests."""
+        return Sums(np.empty((2, tests), dtype=np.int16), np.empty((2, tests), dtype=np.uint8), count)
+
+    def part(self, tests: slice) -> "Sums":
+        """A view of a stretch of tests: what is written to it is written here."""
+        return Sums(self.total[:, tests], self.flags[:, tests], self.count)
+
 
 def threshold_sums(grid: ThresholdGrid, frequencies_hz: Sequence[int]) -> Sums:
     """Sum of the hearing threshold levels at `frequencies_hz` in each ear. [tenths of a dB HL]
 
     A frequency that the files do not hold at all counts as missing in every test.
     """
-    tests = len(grid)
-    total = np.zeros((2, tests), dtype=np.int16)
-    flags = np.zeros((2, tests), dtype=np.uint8)
+    sums = Sums.empty(len(grid), len(frequencies_hz))
+    fill_sums(sums, grid, frequencies_hz, slice(0, len(grid)))
+    return sums
+
+
+def fill_sums(sums: Sums, grid: ThresholdGrid, frequencies_hz: Sequence[int], tests: slice) -> None:
+    """`threshold_sums` of a stretch of tests, written to `sums`, which has room for just these."""
+    sums.total[:] = 0
+    sums.flags[:] = 0
     for frequency in frequencies_hz:
         if frequency not in grid.frequencies_hz:
-            flags |= MISSING
+            sums.flags[:] |= MISSING
             continue
         at = grid.frequencies_hz.index(frequency)
         for ear in (0, 1):
-            total[ear] += grid.threshold[ear, at]
-            response = grid.response[ear, at]
-            flags[ear] |= np.minimum(response, _STATES).view(np.uint8)
-    return Sums(total, flags, len(frequencies_hz))
+            sums.total[ear] += grid.threshold[ear, at, tests]
+            sums.flags[ear] |= np.minimum(grid.response[ear, at, tests], _STATES).view(np.uint8)

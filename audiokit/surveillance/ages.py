@@ -26,27 +26,51 @@ class AgeCorrection:
     value: NDArray[np.int16]
     known: NDArray[np.bool_]
 
+    @staticmethod
+    def empty(tests: int) -> "AgeCorrection":
+        """Room for so many tests."""
+        return AgeCorrection(
+            np.empty(tests, dtype=np.int16), np.empty(tests, dtype=np.int16), np.empty(tests, dtype=bool)
+        )
 
-def ages_at_tests(people: People, grid: ThresholdGrid) -> NDArray[np.int16]:
-    """Age at each test: completed years, the difference of years with only a birth year; -1 where unknown. [years]"""
-    born = np.where(people.birth_day == NO_DATE, 0, people.birth_day)
-    number = np.where(people.birth_day == NO_DATE, people.birth_year.astype(np.int32) * 10000, calendar_number(born))
-    whole_years = people.birth_day == NO_DATE
-    at_test = calendar_number(grid.day)
-    if whole_years.any():
-        at_test = np.where(whole_years[grid.person], at_test // 10000 * 10000, at_test)
-    age = ((at_test - number[grid.person]) // 10000).astype(np.int16)
-    unknown = people.birth_year == 0
-    return np.where(unknown[grid.person], np.int16(-1), age) if unknown.any() else age
+    def part(self, tests: slice) -> "AgeCorrection":
+        """A view of a stretch of tests: what is written to it is written here."""
+        return AgeCorrection(self.age[tests], self.value[tests], self.known[tests])
 
 
-def age_correction(
-    table: AgeTable, frequencies_hz: Sequence[int], people: People, grid: ThresholdGrid
-) -> AgeCorrection:
-    """The age table's sum over `frequencies_hz` at each test's age."""
-    age = ages_at_tests(people, grid)
-    sex = people.sex[grid.person]
+def ages_at_tests(people: People, grid: ThresholdGrid, tests: slice) -> NDArray[np.int16]:
+    """Age at a stretch of tests: completed years, the difference of years with only a birth year. [years]
+
+    -1 where neither birth date nor birth year is known.
+    """
+    if not len(grid.person[tests]):
+        return np.empty(0, dtype=np.int16)
+    crowd = slice(int(grid.person[tests][0]), int(grid.person[tests][-1]) + 1)
+    person = grid.person[tests] - np.int32(crowd.start)
+    only_year = people.birth_day[crowd] == NO_DATE
+    year = people.birth_year[crowd].astype(np.int32)
+    born = np.where(only_year, year * 10000, calendar_number(np.where(only_year, 0, people.birth_day[crowd])))
+    at_test = calendar_number(grid.day[tests])
+    if only_year.any():
+        at_test = np.where(only_year[person], at_test // 10000 * 10000, at_test)
+    age = ((at_test - born[person]) // 10000).astype(np.int16)
+    age[(year == 0)[person]] = -1
+    return age
+
+
+def fill_age_correction(
+    ages: AgeCorrection,
+    table: AgeTable,
+    frequencies_hz: Sequence[int],
+    people: People,
+    grid: ThresholdGrid,
+    tests: slice,
+) -> None:
+    """The age table's sum over `frequencies_hz` at the ages of a stretch of tests, written to `ages`."""
+    ages.age[:] = ages_at_tests(people, grid, tests)
+    sex = people.sex[grid.person[tests]]
     sums = table.lookup(list(frequencies_hz)).sum(axis=1).astype(np.int16)
-    known = (sex != Sex.UNKNOWN) & (age >= 0)
-    value = sums[sex, np.clip(age, table.youngest, table.oldest)]
-    return AgeCorrection(age, np.where(known, value, np.int16(0)), known)
+    ages.known[:] = (sex != Sex.UNKNOWN) & (ages.age >= 0)
+    value = sums[sex, np.clip(ages.age, table.youngest, table.oldest)]
+    value[~ages.known] = 0
+    ages.value[:] = value

@@ -72,17 +72,6 @@ class Judged:
     limit: int
     improvement: int
 
-    def part(self, tests: slice) -> "Judged":
-        """The same for a stretch of tests."""
-        return Judged(
-            low=self.low[:, tests],
-            high=self.high[:, tests],
-            total=self.total[:, tests],
-            level=None if self.level is None else self.level[:, tests],
-            limit=self.limit,
-            improvement=self.improvement,
-        )
-
 
 def history_of(grid: ThresholdGrid) -> History:
     """The order of the tests: initial baselines and possible retests.

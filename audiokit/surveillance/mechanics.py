@@ -11,6 +11,7 @@ from audiokit.core.vocabulary import Met
 from audiokit.rules.spec import Criterion, Rulebook
 from audiokit.surveillance.block import History, Judged, stretches
 from audiokit.surveillance.finders import BaselineDecisions, by_decision, by_event, by_persistence, revision_hits
+from audiokit.surveillance.inputs import Inputs
 from audiokit.surveillance.revision import OtherFrequencies, choose
 from audiokit.surveillance.walk import Changes, Round, Trail, candidates, walk, walk_fixed
 
@@ -40,7 +41,6 @@ class Findings:
     """
 
     criterion: Criterion
-    judged: Judged
     trail: Trail
     proposals: Changes
 
@@ -48,7 +48,7 @@ class Findings:
 def run_mechanics(
     rulebook: Rulebook,
     history: History,
-    judged: dict[str, Judged],
+    inputs: Inputs,
     other: OtherFrequencies,
     decisions: BaselineDecisions,
     plan: Plan,
@@ -56,13 +56,13 @@ def run_mechanics(
 ) -> dict[str, Findings]:
     """Every criterion of a rulebook, in the file's order, over all people.
 
-    judged : by criterion id, what each compares      other : the frequencies outside the revision criterion's own
+    inputs : what each criterion compares      other : the frequencies outside the revision criterion's own
     """
     parts_of_people = stretches(history.first, BLOCK_TESTS)
     trails = {criterion.id: Trail.empty(len(history)) for criterion in rulebook.criteria}
 
     def work(people: slice) -> dict[str, tuple[Changes, Changes]]:
-        return _block(rulebook, history, judged, other, decisions, plan, people, trails)
+        return _block(rulebook, history, inputs, other, decisions, plan, people, trails)
 
     parts: list[dict[str, tuple[Changes, Changes]]] = []
     with ThreadPoolExecutor(max_workers=plan.workers) as pool:
@@ -83,14 +83,14 @@ def run_mechanics(
         trail = trails[criterion.id]
         trail.changes = Changes.join([part[criterion.id][0] for part in parts])
         proposals = Changes.join([part[criterion.id][1] for part in parts])
-        findings[criterion.id] = Findings(criterion, judged[criterion.id], trail, proposals)
+        findings[criterion.id] = Findings(criterion, trail, proposals)
     return findings
 
 
 def _block(
     rulebook: Rulebook,
     history: History,
-    judged: dict[str, Judged],
+    inputs: Inputs,
     other: OtherFrequencies,
     decisions: BaselineDecisions,
     plan: Plan,
@@ -102,10 +102,11 @@ def _block(
     if tests.start == tests.stop:
         return {criterion.id: (Changes.none(), Changes.none()) for criterion in rulebook.criteria}
     part = history.part(people)
+    judged = inputs.judged(tests)
     trail_of = {name: trail.part(tests) for name, trail in trails.items()}
     proposals: dict[str, Changes] = {}
     for criterion in rulebook.criteria:
-        mine, trail = judged[criterion.id].part(tests), trail_of[criterion.id]
+        mine, trail = judged[criterion.id], trail_of[criterion.id]
         openers = [trail_of[o].met for o in criterion.retest_started_by.value if o != criterion.id]
         opened_by = _met_in_either_ear(openers) if openers else None
         window = criterion.retest_window_days.value

@@ -2,7 +2,7 @@
 
 from collections.abc import Callable
 from dataclasses import dataclass
-from functools import cache, cached_property
+from functools import cached_property
 from typing import Any
 
 import numpy as np
@@ -10,18 +10,17 @@ import pandas as pd
 from numpy.typing import NDArray
 
 from audiokit.core.dates import to_days
-from audiokit.measures.shifts import interval_ends, three_valued
-from audiokit.measures.sums import Sums, threshold_sums
+from audiokit.measures.sums import Sums
 from audiokit.model.cohort import Cohort
 from audiokit.model.grid import ThresholdGrid
 from audiokit.rules.catalogue import load_rulebook
-from audiokit.rules.spec import Criterion, Rulebook, tenths
-from audiokit.standards.age_tables import age_table
-from audiokit.surveillance.ages import AgeCorrection, age_correction
+from audiokit.rules.spec import Criterion, Rulebook
+from audiokit.surveillance.ages import AgeCorrection
 from audiokit.surveillance.baselines import BaselineHistory, baseline_history, unanswered
-from audiokit.surveillance.block import History, Judged, history_of
+from audiokit.surveillance.block import History, history_of
 from audiokit.surveillance.decided import DecisionEffect, baseline_decisions, invalidated_tests
 from audiokit.surveillance.events import OUTCOMES, Events, find_events
+from audiokit.surveillance.inputs import Inputs
 from audiokit.surveillance.mechanics import Findings, Plan, run_mechanics
 from audiokit.surveillance.revision import OtherFrequencies
 
@@ -128,22 +127,12 @@ def _review_book(
     progress: Progress | None,
 ) -> BookReview:
     settings = cohort.settings
-    sums: dict[str, Sums] = {}
-    ages: dict[str, AgeCorrection] = {}
-    judged: dict[str, Judged] = {}
-    sums_at = cache(lambda frequencies: threshold_sums(grid, frequencies))
-    ages_by = cache(lambda name, frequencies: age_correction(age_table(name), frequencies, cohort.people, grid))
-    for criterion in rulebook.criteria:
-        frequencies = tuple(criterion.frequencies_hz.value)
-        sums[criterion.id] = sums_at(frequencies)
-        if settings.age_correction and criterion.age_table is not None:
-            ages[criterion.id] = ages_by(criterion.age_table.value, frequencies)
-        judged[criterion.id] = _judged(rulebook, criterion, sums[criterion.id], ages.get(criterion.id))
+    inputs = Inputs(rulebook, cohort.people, grid, settings.age_correction)
     automatic = settings.baseline_revision == "automatic"
     decisions = baseline_decisions(cohort.decisions, grid, cohort.people, as_of_day, automatic)
     plan = Plan(as_of_day, automatic, settings.recording_baseline == "in_force")
     other = _other_frequencies(grid, rulebook.criterion(rulebook.revision.criterion))
-    findings = run_mechanics(rulebook, history, judged, other, decisions.baselines, plan, progress)
+    findings = run_mechanics(rulebook, history, inputs, other, decisions.baselines, plan, progress)
     events = {
         name: find_events(found.trail, history, as_of_day, found.criterion.retest_window_days.value)
         for name, found in findings.items()
@@ -151,24 +140,7 @@ def _review_book(
     revised = findings[rulebook.revision.criterion]
     proposals = unanswered(revised.proposals, decisions)
     baselines = baseline_history(history, revised.trail.changes, proposals)
-    return BookReview(rulebook, findings, sums, ages, events, baselines, decisions)
-
-
-def _judged(rulebook: Rulebook, criterion: Criterion, sums: Sums, ages: AgeCorrection | None) -> Judged:
-    correction = None if ages is None else ages.value * np.int16(10)
-    ends = interval_ends(sums, correction)
-    level = None
-    if criterion.level_at_least_db is not None:
-        levels = interval_ends(sums)
-        level = three_valued(levels.low, levels.high, tenths(criterion.level_at_least_db, sums.count))
-    return Judged(
-        low=ends.low,
-        high=ends.high,
-        total=sums.total,
-        level=level,
-        limit=tenths(criterion.shift_at_least_db, sums.count),
-        improvement=tenths(rulebook.revision.improvement_at_least_db, sums.count),
-    )
+    return BookReview(rulebook, findings, inputs.sums, inputs.ages, events, baselines, decisions)
 
 
 def _other_frequencies(grid: ThresholdGrid, criterion: Criterion) -> OtherFrequencies:

@@ -199,15 +199,21 @@ def _dots(name: str) -> str:
 
 
 def _symbol(ear: str, name: str, x: float, y: float) -> str:
-    """Circle or cross. The baseline's is smaller and lies on a rim of ground, so that equal levels stay readable."""
-    size = 6.5 if name == "current" else 4
-    if ear == "right":
-        shape = f'<circle cx="{x:g}" cy="{y:g}" r="{size:g}" style="{{}}"/>'
-    else:
-        a, b, c, d = x - size, x + size, y - size, y + size
-        shape = f'<path d="M{a:g} {c:g}L{b:g} {d:g}M{a:g} {d:g}L{b:g} {c:g}" style="{{}}"/>'
-    rim = "" if name == "current" else shape.format(f"fill:{_GROUND};stroke:{_GROUND};stroke-width:5")
-    return rim + shape.format(_stroke(ear, name))
+    """Circle or cross. The baseline's is smaller, with a rim of ground around it, so that equal levels show both."""
+    outline = _circle if ear == "right" else _cross
+    if name == "current":
+        return outline(x, y, 6.5 if ear == "right" else 7.5, _stroke(ear, name))
+    rim = outline(x, y, 4 if ear == "right" else 4.5, f"fill:{_GROUND};stroke:{_GROUND};stroke-width:4.5")
+    return rim + outline(x, y, 4 if ear == "right" else 3.2, _stroke(ear, name))
+
+
+def _circle(x: float, y: float, size: float, style: str) -> str:
+    return f'<circle cx="{x:g}" cy="{y:g}" r="{size:g}" style="{style}"/>'
+
+
+def _cross(x: float, y: float, size: float, style: str) -> str:
+    left, right, top, bottom = x - size, x + size, y - size, y + size
+    return f'<path d="M{left:g} {top:g}L{right:g} {bottom:g}M{left:g} {bottom:g}L{right:g} {top:g}" style="{style}"/>'
 
 
 def _arrow(ear: str, name: str, x: float, y: float) -> str:

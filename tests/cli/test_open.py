@@ -34,6 +34,7 @@ def test_it_copies_the_notebook_and_starts_on_this_machine(tmp_path: Path, start
     assert f"--ServerApp.root_dir={folder}" in argv
     assert "--ServerApp.ip=127.0.0.1" in argv
     assert f"--LabApp.default_url=/doc/tree/{NOTEBOOK}" in argv
+    assert "--LabApp.extension_manager=readonly" in argv
     assert "--no-browser" in argv
     assert not [option for option in argv if "token" in option or "port" in option or "root=" in option]
 

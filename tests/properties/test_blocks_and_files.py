@@ -17,6 +17,7 @@ from audiokit.surveillance.review import review
 from tests.oracle.cohort_files import write_cohort
 from tests.oracle.hostile import COMBINATIONS, hostile_cohort
 from tests.properties.invented import Invented, cohorts, few
+from tests.surveillance.small_cohorts import write_rows
 
 
 def files_of(cohort: Cohort, out: Path) -> dict[str, bytes]:
@@ -83,7 +84,9 @@ def test_every_row_is_accepted_or_in_quarantine(tmp_path_factory, data: st.DataO
         rows.append(dict(rows[0]))
         expected.add(len(rows) + 1)
     place = tmp_path_factory.mktemp("cohort")
-    read = read_cohort(Invented(cohort.people, rows, {}).write(place / "in"), as_of=datetime.date(2030, 1, 1))
+    source = Invented(cohort.people, rows, {}).write(place / "in")
+    write_rows(source / "people.csv", cohort.people)
+    read = read_cohort(source, as_of=datetime.date(2030, 1, 1))
     counts = {entry.file: entry for entry in read.intake}
     for file, written in (("people.csv", len(cohort.people)), ("tests.csv", len(rows))):
         assert counts[file].rows_read == written == counts[file].accepted + counts[file].quarantined

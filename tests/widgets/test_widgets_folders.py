@@ -4,6 +4,7 @@ from pathlib import Path
 
 import pytest
 
+from audiokit.widgets import folders
 from audiokit.widgets.folders import cohort_folders, first_choice
 
 
@@ -38,6 +39,19 @@ def test_the_notebooks_own_folder_can_be_the_cohort(tmp_path: Path) -> None:
 
 def test_a_folder_that_is_not_there_offers_nothing(tmp_path: Path) -> None:
     assert cohort_folders(tmp_path / "nowhere") == []
+
+
+def test_a_link_to_itself_hides_nothing(tmp_path: Path) -> None:
+    _touch(tmp_path, "a/cohort.toml")
+    (tmp_path / "a" / "loop").symlink_to("loop")
+    assert cohort_folders(tmp_path) == ["a"]
+
+
+def test_a_big_tree_is_not_searched_to_its_end(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    _touch(tmp_path, *(f"d{at:02}/x/none.txt" for at in range(20)), "d00/cohort.toml", "d19/x/cohort.toml")
+    assert cohort_folders(tmp_path) == ["d00", "d19/x"]
+    monkeypatch.setattr(folders, "_MOST_FOLDERS", 15)
+    assert cohort_folders(tmp_path) == ["d00"]
 
 
 def test_the_first_choice(monkeypatch: pytest.MonkeyPatch) -> None:

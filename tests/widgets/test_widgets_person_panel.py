@@ -39,7 +39,7 @@ def test_a_shift_of_exactly_ten_is_met_and_a_little_less_is_not(panel: YearlyRev
     assert "= 9.6 dB, below 10: no" in blocks[1]
     for block in blocks:
         assert "<li><bdi>29 CFR 1910.95(g)(10)(i)</bdi></li>" in block
-        assert "less baseline A1-1 of 2022-03-01 10+10+10=30" in block
+        assert "less baseline <bdi>A1-1</bdi> of 2022-03-01 10+10+10=30" in block
 
 
 def test_the_latest_test_that_takes_part_comes_first(panel: YearlyReview) -> None:
