@@ -132,7 +132,7 @@ def shifts_table(review: Review, people: slice | None = None) -> pa.Table:
     lines = ShiftLines(review)
     parts = [lines.of(stretch) for stretch in (lines.stretches if people is None else [people])]
     whole = HEADER + b"".join(parts)
-    options = pyarrow.csv.ConvertOptions(column_types=SCHEMA, strings_can_be_null=True)
+    options = pyarrow.csv.ConvertOptions(column_types=SCHEMA, strings_can_be_null=True, null_values=[""])
     parsing = pyarrow.csv.ParseOptions(newlines_in_values=True)
     reading = pyarrow.csv.ReadOptions(block_size=len(whole) + 1)
     return pyarrow.csv.read_csv(io.BytesIO(whole), reading, parsing, options)

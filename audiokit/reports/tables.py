@@ -47,9 +47,8 @@ def _events_of(review: Review, book: BookReview, name: str) -> pa.Table:
     sums = book.sums[name]
     level = sums.total[events.ear, events.deciding].astype(np.int64)
     no_level = sums.flags[events.ear, events.deciding] >= MISSING
-    due, asks = deadlines(review, book, name)
-    notifies, records = criterion.notify_days is not None, criterion.record_days_after_retest is not None
-    stands = events.stands()
+    notice, asks_notice = deadlines(review, book, name, "notify")
+    entry, asks_entry = deadlines(review, book, name, "record")
     columns = [
         review.cohort.people.person_id.take(pa.array(review.grid.person[events.test])),
         review.grid.test_id.take(pa.array(events.test)),
@@ -60,10 +59,10 @@ def _events_of(review: Review, book: BookReview, name: str) -> pa.Table:
         review.grid.test_id.take(pa.array(events.deciding)),
         pa.array(numbers.db(numbers.value()), mask=numbers.bound == 3),
         pa.array(numbers.db(level), mask=no_level),
-        blank_where(~(stands & records), pa.repeat(pa.scalar("yes"), len(stands))),
+        blank_where(~asks_entry, pa.repeat(pa.scalar("yes"), len(asks_entry))),
         blank_where(events.outcome != RETEST_OPEN, date_texts(day[events.test] + np.int32(window))),
-        blank_where(~(asks & notifies), date_texts(due)),
-        blank_where(~(asks & records), date_texts(due)),
+        blank_where(~asks_notice, date_texts(notice)),
+        blank_where(~asks_entry, date_texts(entry)),
         _event_words(review, book, name),
     ]
     return pa.table(columns, names=list(EVENT_COLUMNS))

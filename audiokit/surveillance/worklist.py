@@ -145,10 +145,10 @@ def _event_lines(review: Review, book: BookReview, lines: _Lines) -> None:
             name,
             why,
         )
-        due, asks = deadlines(review, book, name)
         for action, value in (("notify", criterion.notify_days), ("record", criterion.record_days_after_retest)):
             if value is None:
                 continue
+            due, asks = deadlines(review, book, name, action)
             open_ = asks.copy()
             for kind in _CLOSED_BY[action]:
                 named = name if kind == "not_work_related" else None
@@ -163,15 +163,23 @@ def _event_lines(review: Review, book: BookReview, lines: _Lines) -> None:
             )
 
 
-def deadlines(review: Review, book: BookReview, criterion_id: str) -> tuple[NDArray[np.int32], NDArray[np.bool_]]:
-    """Day of notice or of recording of each event of a criterion, and whether the event asks for it."""
+def deadlines(
+    review: Review, book: BookReview, criterion_id: str, action: str
+) -> tuple[NDArray[np.int32], NDArray[np.bool_]]:
+    """Day by which each event of a criterion asks for a notice or an entry in the log, and whether it asks for one.
+
+    action : "notify" or "record"
+    """
     events, criterion = book.events[criterion_id], book.findings[criterion_id].criterion
     day = review.history.day
-    if criterion.notify_days is not None:
+    nothing = np.zeros(len(events.test), dtype=np.int32), np.zeros(len(events.test), dtype=bool)
+    if action == "notify":
+        if criterion.notify_days is None:
+            return nothing
         asks = events.stands() | (events.outcome == RETEST_OPEN)
         return day[events.deciding] + np.int32(criterion.notify_days.value), asks
     if criterion.record_days_after_retest is None or criterion.record_days_without_retest is None:
-        return np.zeros(len(events.test), dtype=np.int32), np.zeros(len(events.test), dtype=bool)
+        return nothing
     after_retest = day[events.deciding] + np.int32(criterion.record_days_after_retest.value)
     without = day[events.test] + np.int32(criterion.record_days_without_retest.value)
     return np.where(events.decided, after_retest, without), events.stands()

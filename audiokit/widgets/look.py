@@ -10,7 +10,7 @@ import anywidget
 STATIC = Path(__file__).parent / "static"
 
 _TAG = re.compile(r"<[^>]*>")
-_SHORT = 16
+_SHORT = 18
 
 MET_WORDS = {"yes": "● met", "no": "○ not met", "unknown": "? cannot tell"}
 """Symbol and word for the three answers, so that none depends on colour."""

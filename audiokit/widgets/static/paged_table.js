@@ -24,7 +24,7 @@ function bodyRow(row, view, model) {
   const cells = row.cells.map((text, at) => {
     const column = view.columns[at];
     const strong = column.emphasis.includes(text) ? " ak-strong" : "";
-    const short = text.length <= 16 ? " ak-short" : ""; // as `look.py` has it
+    const short = text.length <= 18 ? " ak-short" : ""; // as `look.py` has it
     const known = at === 0 ? { scope: "row" } : {};
     return make(at === 0 ? "th" : "td", { ...known, class: `ak-${column.align}${strong}${short}` }, isolated(text));
   });
