@@ -70,7 +70,7 @@ def _calendar() -> NDArray[np.int32]:
 
 def calendar_number(days: ArrayLike) -> NDArray[np.int32]:
     """Year × 10000 + month × 100 + day of dates."""
-    number: NDArray[np.int32] = _calendar()[np.asarray(days) - np.int32(_FIRST_DAY)]
+    number: NDArray[np.int32] = _calendar().take(np.asarray(days) - np.int32(_FIRST_DAY))
     return number
 
 

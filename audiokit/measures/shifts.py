@@ -31,8 +31,14 @@ class Ends:
 def interval_ends(sums: Sums, correction: NDArray[np.int16] | None = None) -> Ends:
     """The ends of the sums, less a correction in the same unit [test] where one is given."""
     total = sums.total if correction is None else sums.total - correction
-    low = np.where(sums.flags >= MISSING, -FAR, total)
-    high = np.where(sums.flags > 0, FAR, total)
+    # Sums instead of masks, which cost several times as much.
+    present = (sums.flags < MISSING).astype(np.int16)
+    closed = (sums.flags == 0).astype(np.int16)
+    low, high = total * present, total * closed
+    present -= np.int16(1)
+    closed -= np.int16(1)
+    low += present * FAR
+    high -= closed * FAR
     return Ends(low, high)
 
 

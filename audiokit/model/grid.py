@@ -1,6 +1,7 @@
 """All tests of all people as aligned arrays, ordered by person, then time."""
 
 from dataclasses import dataclass, field
+from typing import Any
 
 import numpy as np
 import pandas as pd
@@ -84,7 +85,16 @@ class ThresholdGrid:
             valid=self.valid[keep],
             test_id=self.test_id.filter(pa.array(keep)),
             frequencies_hz=self.frequencies_hz,
-            threshold=self.threshold[:, :, keep],
-            response=self.response[:, :, keep],
+            threshold=_kept(self.threshold, keep),
+            response=_kept(self.response, keep),
             details=self.details[keep] if len(self.details.columns) else self.details,
         )
+
+
+def _kept(columns: NDArray[Any], keep: NDArray[np.bool_]) -> NDArray[Any]:
+    """The tests marked in `keep`, column by column: a mask over the whole would leave the columns in pieces."""
+    kept = np.empty((*columns.shape[:2], int(keep.sum())), dtype=columns.dtype)
+    for ear in range(columns.shape[0]):
+        for at in range(columns.shape[1]):
+            kept[ear, at] = columns[ear, at][keep]
+    return kept

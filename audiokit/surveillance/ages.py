@@ -52,9 +52,10 @@ def ages_at_tests(people: People, grid: ThresholdGrid, tests: slice) -> NDArray[
     born = np.where(only_year, year * 10000, calendar_number(np.where(only_year, 0, people.birth_day[crowd])))
     at_test = calendar_number(grid.day[tests])
     if only_year.any():
-        at_test = np.where(only_year[person], at_test // 10000 * 10000, at_test)
-    age = ((at_test - born[person]) // 10000).astype(np.int16)
-    age[(year == 0)[person]] = -1
+        at_test = np.where(only_year.take(person), at_test // 10000 * 10000, at_test)
+    age = ((at_test - born.take(person)) // 10000).astype(np.int16)
+    if (year == 0).any():
+        age[(year == 0).take(person)] = -1
     return age
 
 
@@ -68,9 +69,10 @@ def fill_age_correction(
 ) -> None:
     """The age table's sum over `frequencies_hz` at the ages of a stretch of tests, written to `ages`."""
     ages.age[:] = ages_at_tests(people, grid, tests)
-    sex = people.sex[grid.person[tests]]
+    sex = people.sex.take(grid.person[tests])
     sums = table.lookup(list(frequencies_hz)).sum(axis=1).astype(np.int16)
-    ages.known[:] = (sex != Sex.UNKNOWN) & (ages.age >= 0)
-    value = sums[sex, np.clip(ages.age, table.youngest, table.oldest)]
-    value[~ages.known] = 0
-    ages.value[:] = value
+    np.greater_equal(ages.age, 0, out=ages.known)
+    ages.known[:] &= sex != Sex.UNKNOWN
+    clamped = np.minimum(np.maximum(ages.age, table.youngest), table.oldest)
+    ages.value[:] = sums.reshape(-1).take(clamped + sex * np.int16(sums.shape[1]))
+    ages.value[:] *= ages.known.view(np.int8)

@@ -45,7 +45,7 @@ def baseline_history(history: History, changes: Changes, proposals: Changes) -> 
     from_day = np.concatenate((history.day[np.repeat(history.initial[people], 2)], np.maximum(changes.day, started)))
     found_at = np.concatenate((np.full(2 * len(people), -1, dtype=np.int32), changes.found_at))
     reason = np.concatenate((np.full(2 * len(people), INITIAL, dtype=np.int8), changes.reason))
-    order = np.lexsort((ear, person))  # stable: within an ear in the order in which they took effect
+    order = np.argsort(person * 2 + ear, kind="stable")  # within an ear in the order in which they took effect
     person, ear, from_day = person[order], ear[order], from_day[order]
     until = np.full(len(order), NO_DATE, dtype=np.int32)
     replaced = np.flatnonzero((person[1:] == person[:-1]) & (ear[1:] == ear[:-1]))

@@ -87,7 +87,7 @@ def history_of(grid: ThresholdGrid) -> History:
     linkable = (grid.purpose == Purpose.RETEST) | (grid.purpose == Purpose.BLANK)
     if tests:
         linkable[grid.first[:-1][np.diff(grid.first) > 0]] = False
-    before = index <= initial[grid.person] if people else np.zeros(0, dtype=bool)
+    before = index <= initial.take(grid.person) if people else np.zeros(0, dtype=bool)
     return History(grid.person, grid.first, grid.day, initial, before, linkable)
 
 

@@ -51,12 +51,12 @@ def _events_of_ear(
 ) -> tuple[Indices, Indices, Indices, NDArray[np.int8], NDArray[np.bool_]]:
     met = trail.met[ear]
     yes = np.flatnonzero(met == Met.YES).astype(np.int32)
-    slot = trail.owner[yes]
-    decider = trail.decider[slot]
-    answer = np.where(decider < 0, np.int8(Met.UNKNOWN), met[decider])
+    slot = trail.owner.take(yes)
+    decider = trail.decider.take(slot)
+    answer = np.where(decider < 0, np.int8(Met.UNKNOWN), met.take(np.maximum(decider, 0)))
     decided = answer != Met.UNKNOWN
     periodic = slot == yes
-    found = ~periodic & (decider == yes) & (met[slot] != Met.YES)
+    found = ~periodic & (decider == yes) & (met.take(slot) != Met.YES)
     outcome = np.where(history.day[slot] + window_days >= as_of_day, RETEST_OPEN, NO_RETEST).astype(np.int8)
     outcome[answer == Met.YES] = CONFIRMED
     outcome[answer == Met.NO] = NOT_CONFIRMED

@@ -55,7 +55,7 @@ def revision_hits(
     """
     total = judged.total[ear]
     better = view.better[ear]
-    better = better[total[better] - total[trail.base[ear][better]] <= -judged.improvement]
+    better = better[total.take(better) - total.take(trail.base[ear].take(better)) <= -judged.improvement]
     return find_hits(
         _effective(history, trail, ear, _exact(judged, trail, ear, better), since),
         _effective(history, trail, ear, _exact(judged, trail, ear, view.yes[ear]), since),
@@ -66,18 +66,19 @@ def revision_hits(
 
 def _exact(judged: Judged, trail: Trail, ear: int, tests: Indices) -> Indices:
     """Those of some tests whose shift is one number."""
-    low, high, base = judged.low[ear], judged.high[ear], trail.base[ear][tests]
-    return tests[(low[tests] == high[tests]) & (low[base] == high[base])]
+    low, high, base = judged.low[ear], judged.high[ear], trail.base[ear].take(tests)
+    return tests[(low.take(tests) == high.take(tests)) & (low.take(base) == high.take(base))]
 
 
 def _effective(history: History, trail: Trail, ear: int, tests: Indices, since: Indices | None) -> Effective:
     slot, test, _ = trail.standing(ear, tests)
     if since is not None:
-        present = slot >= since[ear][history.person[slot]]
+        present = slot >= since[ear].take(history.person.take(slot))
         slot, test = slot[present], test[present]
     follows = np.zeros(len(slot), dtype=bool)
-    follows[1:] = slot[:-1] == trail.owner[slot[1:] - 1]
-    follows[1:] &= trail.sequence[ear][slot[1:]] == trail.sequence[ear][slot[:-1]]
+    sequence = trail.sequence[ear].take(slot)
+    follows[1:] = slot[:-1] == trail.owner.take(slot[1:] - 1)
+    follows[1:] &= sequence[1:] == sequence[:-1]
     return Effective(slot, test, follows)
 
 

@@ -96,8 +96,8 @@ class OtherFrequencies:
         better = np.zeros(len(later), dtype=bool)
         for at in self.at:
             level, response = self.threshold[ear, at], self.response[ear, at]
-            difference = level[later] - level[earlier]
-            then, now = response[earlier], response[later]
+            difference = level.take(later) - level.take(earlier)
+            then, now = response.take(earlier), response.take(later)
             usable = (then <= Response.NO_RESPONSE) & (now <= Response.NO_RESPONSE)
             closed = now == Response.MEASURED
             both_open = (then == Response.NO_RESPONSE) & ~closed
@@ -113,7 +113,7 @@ def choose(hits: Hits, total: NDArray[np.int16], ear: int, other: OtherFrequenci
     For a persistent shift the later wins a tie when it is better at the other frequencies.
     total : sums of thresholds of all tests in this ear, never age-corrected
     """
-    difference = total[hits.test] - total[hits.earlier]
+    difference = total.take(hits.test) - total.take(hits.earlier)
     take_later = difference < 0
     tied = np.flatnonzero((difference == 0) & (hits.reason == PERSISTENT_SHIFT))
     if len(tied):

@@ -104,8 +104,8 @@ class Trail:
 
         Returns the periodic tests, the tests that stand for them, and whether a retest decided; all ascending.
         """
-        owner = self.owner[tests]
-        decider = self.decider[owner]
+        owner = self.owner.take(tests)
+        decider = self.decider.take(owner)
         decided = decider >= 0
         decided[decided] = self.met[ear][decider[decided]] != Met.UNKNOWN
         stands = np.where(decided, decider, owner) == tests
@@ -176,6 +176,7 @@ def walk_fixed(
     """Judge every test against given baselines [ear, test]; nothing changes them here."""
     _start(history, trail)
     trail.base[:] = base
+    trail.met[:] = Met.UNKNOWN
     follows = follows_within(history.linkable, history.day, window_days)
     rows = np.flatnonzero(~history.before).astype(np.int32)
     _judge(history, judged, trail, rows, follows, opened_by, window_days)
@@ -189,12 +190,11 @@ def candidates(history: History, judged: Judged, trail: Trail) -> Round:
 
 
 def _start(history: History, trail: Trail) -> None:
-    initial = np.repeat(history.initial, history.counts)
+    initial = history.initial.take(history.person)
     trail.base[0] = initial
     trail.base[1] = initial
     trail.owner[:] = np.arange(len(history), dtype=np.int32)
     trail.decider[:] = -1
-    trail.met[:] = Met.UNKNOWN
     trail.sequence[:] = 0
 
 
@@ -203,16 +203,16 @@ def _judge_all(
 ) -> Round:
     """First round, on whole columns: everybody is compared with the initial baseline."""
     picked = []
-    after = ~history.before
+    after, before = ~history.before, history.before.view(np.int8) * np.int8(Met.UNKNOWN)
     for ear in (0, 1):
-        low, high = judged.low[ear], judged.high[ear]
-        base_high = np.repeat(high[history.initial], history.counts)
-        base_low = np.repeat(low[history.initial], history.counts)
+        low, high, base = judged.low[ear], judged.high[ear], trail.base[ear]
+        base_high, base_low = high.take(base), low.take(base)
         lower, upper = np.subtract(low, base_high, out=base_high), np.subtract(high, base_low, out=base_low)
         met = three_valued(lower, upper, judged.limit)
         if judged.level is not None:
             np.minimum(met, judged.level[ear], out=met)
-        np.putmask(met, history.before, Met.UNKNOWN)
+        met *= after.view(np.int8)  # sums instead of masks, which cost twenty times as much
+        met += before
         trail.met[ear] = met
         better = upper <= -judged.improvement
         better &= after
@@ -262,7 +262,7 @@ def _link_retests(
     history: History, trail: Trail, view: Round, follows: Mask, opened_by: Indices | None, window_days: int
 ) -> None:
     openers = [*view.yes] if opened_by is None else [*view.yes, opened_by]
-    starts = sorted_union([tests[follows[tests]] for tests in openers])
+    starts = sorted_union([tests[follows.take(tests)] for tests in openers])
     starts, ends = find_runs(starts, history.linkable, history.day, window_days)
     retests, lengths = index_ranges(starts + np.int32(1), ends)
     trail.owner[retests] = np.repeat(starts, lengths)

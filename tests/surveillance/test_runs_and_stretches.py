@@ -58,8 +58,8 @@ def test_runs(history: tuple[list[int], list[int], list[bool], list[bool]]) -> N
 def test_the_deciding_retest(history: tuple[list[int], list[int], list[bool], list[bool]], data: st.DataObject) -> None:
     """The last of each run that is known in at least one ear."""
     runs = scalar_runs(*history)
-    met = np.array(data.draw(st.lists(st.lists(st.sampled_from([0, 1, 1, 2]), min_size=len(history[0]),
-                                               max_size=len(history[0])), min_size=2, max_size=2)), dtype=np.int8)  # fmt: skip
+    answers = st.lists(st.sampled_from([0, 1, 1, 2]), min_size=len(history[0]), max_size=len(history[0]))
+    met = np.array([data.draw(answers), data.draw(answers)], dtype=np.int8)
     starts, ends = (np.array([run[n] for run in runs], dtype=np.int32) for n in (0, 1))
     expected = []
     for start, end in runs:
