@@ -241,3 +241,22 @@ def test_recording_baseline_moves_after_the_run(tmp_path) -> None:
     assert set(tables.compared_with(RECORDABLE, "left").values()) == {"P base"}
     for as_of, baseline in ((after(30), "Q base"), (after(31), "Q first")):
         assert reviewed(folder, as_of=as_of).compared_with(RECORDABLE, person="Q")["Q 1"] == baseline
+
+
+def test_the_periodic_test_stands_where_the_retest_cannot_tell(tmp_path) -> None:
+    """In the right ear it stays the effective test: for the persistence rule, and for the recording baseline."""
+    rows = [
+        *case("P", (9, "CNT", 0), first=30, first_left=30),
+        hearing_test("P late", "2025-02-10", 41, 0, "annual", "P"),
+    ]
+    folder = write_cohort(tmp_path, rows)
+    tables = reviewed(folder, baseline_revision="automatic")
+    assert outcomes(tables, "P") == {
+        ("first", "right"): "no_retest",
+        ("first", "left"): "not_confirmed",
+        ("late", "right"): "no_retest",
+    }
+    assert tables.history()[1:] == [("P first", "2025-02-10", "", "persistent_shift", "in_force")]
+    assert tables.compared_with(RECORDABLE)["P late"] == "P first"
+    assert tables.history("left") == [("P base", "2023-02-10", "", "initial", "in_force")]
+    assert tables.compared_with(RECORDABLE, "left")["P late"] == "P base"

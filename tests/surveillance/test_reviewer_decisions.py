@@ -257,6 +257,17 @@ def test_answered_proposals_disappear(tmp_path) -> None:
     assert proposals(reviewed(folder)) == ["C"], "the other ear answers nothing"
 
 
+@pytest.mark.parametrize("effect", ["2022-06-01", "2029-12-31", "2031-01-01"])
+def test_a_proposal_of_the_last_test_is_answered_from_its_day_on(tmp_path, effect) -> None:
+    """Also by a decision that no test follows yet, or that counts only after the date of the review."""
+    folder = write_cohort(tmp_path, yearly(0, 15, 16))
+    assert proposals(reviewed(folder)) == ["B"]
+    decide(folder, "revise_baseline", "A", "right", on=effect)
+    tables = reviewed(folder)
+    assert (proposals(tables), tables.met()) == ([], {"B": "yes", "C": "yes"})
+    assert len(idle(tables)) == (effect > "2030-01-01")
+
+
 def test_a_refused_proposal_disappears_and_nothing_else_changes(tmp_path) -> None:
     folder = write_cohort(tmp_path, yearly(0, 15, 16, 17))
     before = reviewed(folder)
