@@ -38,9 +38,12 @@ def check_target(target: Path | str, own_names: frozenset[str] = frozenset()) ->
 def resolved(path: Path | str) -> Path:
     """The path with links followed; OutputError where it cannot be."""
     try:
-        return Path(path).resolve()
+        place = Path(path).resolve()
+        if place.is_symlink():  # links in a circle; Python 3.13 and later do not raise on them
+            raise OSError("its links go round in a circle")
     except (OSError, RuntimeError, ValueError) as error:
         raise OutputError(f"{path!s} is no path that can be followed ({error})", "choose another name") from error
+    return place
 
 
 @contextlib.contextmanager

@@ -9,7 +9,7 @@ from contextlib import contextmanager
 from pathlib import Path
 
 _DROP_RIGHTS = """
-import os, sys
+import os, sys, urllib.parse  # later Pythons import it late, when the rights are gone
 from pathlib import Path
 if os.geteuid() == 0:
     os.setgroups([])
