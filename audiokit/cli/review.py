@@ -59,10 +59,10 @@ def iso_date(text: str) -> datetime.date:
 
 
 def _run(arguments: argparse.Namespace) -> int:
-    from audiokit.io.atomic_target import check_target
+    from audiokit.io.atomic_target import check_target, resolved
 
     out = check_target(arguments.out)
-    if out == arguments.cohort.resolve():
+    if out == resolved(arguments.cohort):
         raise OutputError(f"{out} is the cohort folder itself", f"choose another, for example {out / 'review'}")
 
     from audiokit.io.cohort import read_cohort

@@ -7,6 +7,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 _QUOTE, _LINE_FEED, _RETURN = 34, 10, 13
+_END = 0
+"""Stands for the byte after the last one; no text holds it."""
 _BLOCK = 1 << 18
 
 
@@ -17,7 +19,7 @@ class Records:
     start, stop : int64 byte offsets, line end excluded [record]
     line        : int64 physical line on which the record begins, counted from 1 [record]
     cells       : int64 number of cells [record]
-    stray_quote : True where a quotation mark opens inside a cell: the extents are then not to be trusted
+    stray_quote : True where a quotation mark opens or closes inside a cell: the extents are then not to be trusted
     open_quote  : line of the last quotation mark that opens and never closes, 0 where there is none
     """
 
@@ -61,7 +63,7 @@ def _blocks(text: NDArray[np.uint8], delimiter: int) -> Iterator[tuple[int, _Blo
         of_interest = (block == _QUOTE) | (block == delimiter) | (block == _LINE_FEED) | (block == _RETURN)
         at = np.flatnonzero(of_interest)
         before = int(text[offset - 1]) if offset else _LINE_FEED
-        after = int(text[end]) if end < len(text) else 0
+        after = int(text[end]) if end < len(text) else _END
         yield offset, _Block(block, at, block[at], before, after)
 
 
@@ -75,8 +77,9 @@ def _outside(block: _Block, delimiter: int, scan: _Scan) -> NDArray[np.bool_] | 
     previous = block.bytes[opening - 1]
     if len(opening) and opening[0] == 0:
         previous[0] = block.before
-    allowed = (previous == delimiter) | (previous == _QUOTE) | (previous == _LINE_FEED) | (previous == _RETURN)
-    scan.stray_quote |= not allowed.all()
+    following = _bytes_after(block, block.at[quotes[1 - (scan.quotes & 1) :: 2]])
+    beside = np.array((delimiter, _QUOTE, _LINE_FEED, _RETURN), np.uint8)
+    scan.stray_quote |= not (np.isin(previous, beside).all() and np.isin(following, (*beside, _END)).all())
     inside = np.cumsum(is_quote, dtype=np.uint8)
     inside += np.uint8(scan.quotes & 1)
     scan.quotes += len(quotes)
@@ -88,11 +91,14 @@ def _line_ends(block: _Block) -> NDArray[np.bool_]:
     ends = block.kind == _LINE_FEED
     returns = np.flatnonzero(block.kind == _RETURN)
     if len(returns):
-        next_at = block.at[returns] + 1
-        last = len(block.bytes) - 1
-        following = np.where(next_at <= last, block.bytes[np.minimum(next_at, last)], block.after)
-        ends[returns[following != _LINE_FEED]] = True
+        ends[returns[_bytes_after(block, block.at[returns]) != _LINE_FEED]] = True
     return ends
+
+
+def _bytes_after(block: _Block, at: NDArray[np.int64]) -> NDArray[np.uint8]:
+    """The byte that follows each of some places of the block."""
+    last = len(block.bytes) - 1
+    return np.where(at < last, block.bytes[np.minimum(at + 1, last)], np.uint8(block.after))
 
 
 def find_records(text: NDArray[np.uint8], delimiter: int) -> Records:

@@ -20,6 +20,7 @@ def decode(data: bytes, file: str, encoding: str | None) -> bytes:
             return _without_zeros(data, file)
     try:
         text = data.decode(name)
+        encoded = data if name == "utf-8" else text.removeprefix("\ufeff").encode()
     except UnicodeDecodeError as error:
         _without_zeros(data[: error.start], file)
         line = data.count(b"\n", 0, error.start) + 1
@@ -28,7 +29,9 @@ def decode(data: bytes, file: str, encoding: str | None) -> bytes:
             'save the file as "CSV UTF-8", or name its encoding for this file in cohort.toml, '
             'for example encoding = "cp1252"',
         ) from None
-    return _without_zeros(data if name == "utf-8" else text.removeprefix("\ufeff").encode(), file)
+    except UnicodeError as error:
+        raise CohortError(f"{file}: this is not text in {name} ({error})", "correct encoding in cohort.toml") from None
+    return _without_zeros(encoded, file)
 
 
 def _without_zeros(data: bytes, file: str) -> bytes:

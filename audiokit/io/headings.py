@@ -1,6 +1,7 @@
 """Headings of a file, and which of our columns stands under which of them."""
 
 import difflib
+import re
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
@@ -16,6 +17,8 @@ from audiokit.io.columns import (
     is_false_threshold_column,
 )
 from audiokit.io.raw import RawTable, encode
+
+_MOST_SHOWN, _LONGEST_SHOWN = 60, 80
 
 
 def clean_headings(
@@ -62,7 +65,9 @@ class Mapped:
 
 
 def _listed(headings: Sequence[str]) -> str:
-    return ", ".join(headings) if headings else "none"
+    """Headings for a message: not more than can be read."""
+    cut = [f"{h[: _LONGEST_SHOWN - 1]}…" if len(h) > _LONGEST_SHOWN else h for h in headings[:_MOST_SHOWN]]
+    return ", ".join(cut + ["…"] * (len(headings) > _MOST_SHOWN)) if headings else "none"
 
 
 def _map(table: RawTable, known: Sequence[str], mapping: Mapping[str, str], section: str) -> Mapped:
@@ -88,16 +93,24 @@ def _map(table: RawTable, known: Sequence[str], mapping: Mapping[str, str], sect
     taken = set(heading.values())
     heading |= {name: name for name in table.headings if name in known and name not in taken}
     others = tuple(name for name in table.headings if name not in set(heading.values()))
+    for theirs in others:
+        name = re.sub(r"[\s\-_]+", "_", theirs).casefold()
+        if name in known and name not in heading:
+            raise CohortError(
+                f"{table.file}: the column {theirs!r} would not be read, as our name for it is written {name}",
+                f'rename it, or name it under {section} in cohort.toml: {name} = "{theirs}"',
+            )
     return Mapped(heading, others)
 
 
 def _missing(table: RawTable, names: Sequence[str], others: Sequence[str], section: str, what: str) -> CohortError:
     near = [(name, match[0]) for name in names if (match := difflib.get_close_matches(name, others, 1))]
     hint = "; ".join(f"{name} may be the column {match!r}" for name, match in near)
+    lower = " If the headings stand further down, set header_row under [sheet]."
     return CohortError(
         f"{table.file}: {what}" + (f"; {hint}" if hint else ""),
         f"name the column under {section} in cohort.toml (ours = theirs); "
-        f"the file's headings are: {_listed(table.headings)}",
+        f"the file's headings are: {_listed(table.headings)}" + (lower if len(others) == len(table.headings) else ""),
     )
 
 

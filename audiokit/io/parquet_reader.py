@@ -41,6 +41,7 @@ def read_parquet(data: bytes, file: str, *, all_different: Collection[str] = ())
         _check_schema(schema, file)
         texts = [field.name for field in schema if is_text_type(field.type) and field.name not in all_different]
         table = pyarrow.parquet.read_table(pa.BufferReader(data), read_dictionary=texts)
+        table.validate(full=True)  # a damaged file can hold bytes that are no text
     except (pa.ArrowException, OSError) as error:
         raise CohortError(
             f"{file}: the parquet file is damaged ({str(error).splitlines()[0]})", "export it again"

@@ -5,17 +5,24 @@ from audiokit.io.raw import RawTable
 from audiokit.io.settings import SUFFIXES, SourceFile
 
 _ZIP, _OLE, _PARQUET = b"PK\x03\x04", b"\xd0\xcf\x11\xe0", b"PAR1"
+_OWN_SUFFIX = "give it its own suffix"
 _SIGNS = {
-    _ZIP: "an Excel workbook (or another zip archive)",
-    _OLE: "an old or password-protected Excel workbook",
-    _PARQUET: "a parquet file",
+    _ZIP: ("an Excel workbook (or another zip archive)", _OWN_SUFFIX),
+    _OLE: ("an old or password-protected Excel workbook", "save it without password as .xlsx, or export it as .csv"),
+    _PARQUET: ("a parquet file", _OWN_SUFFIX),
+    b"\x1f\x8b": ("packed with gzip", "unpack it"),
+    b"%PDF": ("a PDF document", "export the table itself as .csv or .xlsx"),
+    b"\x89PNG": ("a picture", "export the table itself as .csv or .xlsx"),
 }
+"""First bytes of a file -> what it is, and the mend where it should be something else."""
 
 
 def _read_bytes(source: SourceFile) -> bytes:
     try:
         return source.path.read_bytes()
     except FileNotFoundError:
+        if source.path.is_symlink():
+            raise CohortError(f"{source.name}: a link to a file that is not there", "mend the link") from None
         raise CohortError(
             f"{source.name}: there is no such file in the folder", "check [files] in cohort.toml"
         ) from None
@@ -31,12 +38,9 @@ def _read_bytes(source: SourceFile) -> bytes:
 def _check_sign(data: bytes, suffix: str, file: str) -> None:
     """A file whose first bytes belong to another kind of file is refused, whatever its name says."""
     expected = {".csv": None, ".xlsx": _ZIP, ".parquet": _PARQUET}[suffix]
-    for sign, what in _SIGNS.items():
+    for sign, (what, mend) in _SIGNS.items():
         if data.startswith(sign) and sign != expected:
-            raise CohortError(
-                f"{file}: the file is {what}, whatever its name says",
-                "save it without password as .xlsx, or export it as .csv" if sign == _OLE else "give it its own suffix",
-            )
+            raise CohortError(f"{file}: the file is {what}, whatever its name says", mend)
 
 
 def read_table(source: SourceFile) -> RawTable:

@@ -124,7 +124,8 @@ class Key:
 def check_repeats(stack: Stack, near: Rows, key: Key | None, skip: NDArray[np.bool_]) -> None:
     """Note rows equal to an earlier one, and all rows that share a key but differ.
 
-    near : numbers that are equal wherever whole rows are equal, so that only rows sharing one need be compared
+    near : numbers that rows share only if they mean the same where files write it in their own ways (person, time);
+           only rows that share one can be equal
     skip : rows that take no part [row of the stack]
     """
     candidate = repeated(near)
@@ -133,7 +134,7 @@ def check_repeats(stack: Stack, near: Rows, key: Key | None, skip: NDArray[np.bo
     rows = np.flatnonzero(candidate & ~skip)
     if not len(rows):
         return
-    contents = signatures(stack, rows)
+    contents = pd.factorize(pair(signatures(stack, rows), pd.factorize(near[rows])[0].astype(np.int64)))[0]
     _, first = np.unique(contents, return_index=True)
     later = np.flatnonzero(first[contents] != np.arange(len(rows)))
     stack.add("duplicate_row", rows[later], "", stack.label(rows[first[contents[later]]]))

@@ -1,15 +1,17 @@
 """cohort.toml and the folder's files: which files there are, how each is written, and the settings of the review."""
 
 import datetime
+import os
 import tomllib
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
-from pathlib import Path
+from pathlib import Path, PurePath
 from typing import Any
 
 from audiokit.core.errors import CohortError
+from audiokit.io.date_cells import FIRST_YEAR, LAST_YEAR
 from audiokit.io.source_settings import FORMAT_KEYS, SourceSettings, read_columns, read_format
-from audiokit.io.toml_tables import TomlTable
+from audiokit.io.toml_tables import TomlTable, shown
 from audiokit.model.cohort import Settings
 
 FILE_NAME = "cohort.toml"
@@ -23,7 +25,7 @@ _SOURCE_KEYS = ("people", "tests", "columns", *FORMAT_KEYS)
 
 @dataclass(frozen=True)
 class SourceFile:
-    """One file of the cohort: its name as written, where it lies, and how it is written."""
+    """One file of the cohort: its name as cohort.toml writes it, where it lies, and how it is written."""
 
     name: str
     path: Path
@@ -52,7 +54,11 @@ def _read_toml(folder: Path) -> TomlTable:
     except UnicodeDecodeError as error:
         line = data.count(b"\n", 0, error.start) + 1
         raise CohortError(f"{FILE_NAME}, line {line}: not UTF-8 text", "save the file as UTF-8") from None
-    except tomllib.TOMLDecodeError as error:
+    except RecursionError:
+        raise CohortError(
+            f"{FILE_NAME}: lists or tables are nested too deep", "write each key on a line of its own"
+        ) from None
+    except ValueError as error:  # tomllib lets pass what Python says to a number of thousands of digits
         last = data.rstrip().count(b"\n") + 1
         message = str(error).replace("at end of document", f"at line {last}, the end of the document")
         raise CohortError(f"{FILE_NAME}: {message}", "correct that line; texts stand in quotation marks") from None
@@ -64,10 +70,11 @@ def _as_of(table: TomlTable) -> datetime.date | None:
         try:
             return datetime.date.fromisoformat(value)
         except ValueError:
-            value = repr(value)
+            pass
     elif value is None or (isinstance(value, datetime.date) and not isinstance(value, datetime.datetime)):
         return value
-    raise table.error("as_of", f"{value} is not a date", "write a date such as 2026-03-01")
+    words = value if isinstance(value, datetime.datetime | datetime.time) else shown(value)
+    raise table.error("as_of", f"{words} is not a date", "write a date such as 2026-03-01")
 
 
 def _settings(table: TomlTable, folder: Path) -> Settings:
@@ -80,14 +87,15 @@ def _settings(table: TomlTable, folder: Path) -> Settings:
     given = {key: value for key, value in given.items() if value is not None}
     if len(set(given.get("rulebooks", ()))) < len(given.get("rulebooks", ())):
         raise table.error("rulebook", "a rulebook is named twice", "name each once")
-    name = table.text("name") or folder.resolve().name
+    name = table.text("name") or os.fsencode(_title(folder)).decode(errors="replace")
     return Settings(name=name, as_of=_as_of(table) or datetime.date.today(), **given)
 
 
 def override(settings: Settings, **arguments: Any) -> Settings:
     """Settings with the caller's own arguments put over those of the file; None leaves a setting as it is.
 
-    Raises CohortError where an argument is none of the allowed words.
+    Raises CohortError where an argument is none of the allowed words, or as_of lies outside the years that files may
+    hold.
     """
     for key, allowed in (("baseline_revision", _BASELINE_REVISIONS), ("recording_baseline", _RECORDING_BASELINES)):
         if arguments.get(key) is not None and arguments[key] not in allowed:
@@ -97,14 +105,32 @@ def override(settings: Settings, **arguments: Any) -> Settings:
         arguments["rulebooks"] = (rulebooks,) if isinstance(rulebooks, str) else tuple(rulebooks)
         if not arguments["rulebooks"]:
             raise CohortError("no rulebook is named", "name at least one, for example us-osha")
-    return replace(settings, **{key: value for key, value in arguments.items() if value is not None})
+    found = replace(settings, **{key: value for key, value in arguments.items() if value is not None})
+    if not FIRST_YEAR <= found.as_of.year <= LAST_YEAR:
+        raise CohortError(
+            f"as_of: {found.as_of} lies outside the years {FIRST_YEAR} to {LAST_YEAR}",
+            "name the date for which the review shall speak, for example 2026-03-01",
+        )
+    return found
+
+
+def _title(folder: Path) -> str:
+    return folder.resolve().name or str(folder)
+
+
+def _names(table: TomlTable, kind: str) -> list[str]:
+    """The files that a table names under people or tests, each written in one way only."""
+    names = table.texts(kind) or ()
+    if any("\0" in name for name in names):
+        raise table.error(kind, "a file's name cannot hold a zero character", "correct the name")
+    return [PurePath(name).as_posix() for name in names]
 
 
 def _default_file(folder: Path, kind: str) -> str | None:
-    found = [f"{kind}{suffix}" for suffix in SUFFIXES if (folder / f"{kind}{suffix}").exists()]
+    found = [f"{kind}{suffix}" for suffix in SUFFIXES if os.path.lexists(folder / f"{kind}{suffix}")]
     if len(found) > 1:
         raise CohortError(
-            f"{folder.name}: the folder holds {' and '.join(found)}",
+            f"{_title(folder)}: the folder holds {' and '.join(found)}",
             f'keep one of them, or name the right one: [files] {kind} = "{found[0]}" in {FILE_NAME}',
         )
     return found[0] if found else None
@@ -125,7 +151,7 @@ def _sources(table: TomlTable, shared: SourceSettings) -> dict[str, dict[str, So
         settings = read_format(source, replace(shared, **_top_columns(table, kind)))
         if (columns := source.table("columns")) is not None:
             settings = replace(settings, columns=read_columns(columns, kind), columns_section="[source.columns]")
-        for name in source.texts(kind) or ():
+        for name in _names(source, kind):
             if name in found[kind]:
                 raise CohortError(f"{FILE_NAME}: two [[source]] tables describe {name}", "keep one of them")
             found[kind][name] = settings
@@ -145,18 +171,18 @@ def _files(
     table: TomlTable, kind: str, folder: Path, own: dict[str, SourceSettings], shared: SourceSettings
 ) -> tuple[SourceFile, ...]:
     files = table.table("files")
-    listed = None
+    names = []
     if files is not None:
         files.only(("people", "tests"))
-        listed = files.texts(kind)
-    default = _default_file(folder, kind) if listed is None and not (kind == "people" and own) else None
-    names = list(listed or ([default] if default else []))
+        names = _names(files, kind)
+    if not names and not (kind == "people" and own) and (default := _default_file(folder, kind)):
+        names = [default]
     if len(set(names)) < len(names):
         raise CohortError(f"{FILE_NAME}, [files] {kind}: a file is named twice", "name each file once")
     names += [name for name in own if name not in names]
     if not names:
         raise CohortError(
-            f"{folder.name}: there is no {kind} table ({', '.join(kind + suffix for suffix in SUFFIXES)})",
+            f"{_title(folder)}: there is no {kind} table ({', '.join(kind + suffix for suffix in SUFFIXES)})",
             f'put it into the folder, or name it: [files] {kind} = "…" in {FILE_NAME}',
         )
     general = replace(shared, **_top_columns(table, kind))
@@ -182,8 +208,12 @@ def read_plan(folder: Path) -> CohortPlan:
     table.only(_TOP_KEYS)
     shared = read_format(table, SourceSettings())
     own = _sources(table, shared)
-    return CohortPlan(
-        _settings(table, folder),
-        _files(table, "people", folder, own["people"], shared),
-        _files(table, "tests", folder, own["tests"], shared),
-    )
+    files = {kind: _files(table, kind, folder, own[kind], shared) for kind in own}
+    both = {file.name for file in files["people"]} & {file.name for file in files["tests"]}
+    told_apart = {kind: tuple(_with_sheet(file, kind, both) for file in files[kind]) for kind in files}
+    return CohortPlan(_settings(table, folder), **told_apart)
+
+
+def _with_sheet(file: SourceFile, kind: str, both: set[str]) -> SourceFile:
+    """A file of people and tests at once, such as a workbook, goes by its sheets, so that row numbers stay clear."""
+    return replace(file, name=f"{file.name} [{file.settings.sheet or kind}]") if file.name in both else file

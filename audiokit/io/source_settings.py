@@ -7,10 +7,12 @@ from typing import Any
 from audiokit.core.vocabulary import FREQUENCIES_HZ, HIGHEST_DB_HL, LOWEST_DB_HL, Response
 from audiokit.io.columns import PEOPLE_COLUMNS, TEST_COLUMNS
 from audiokit.io.date_cells import DATE_ORDERS
-from audiokit.io.toml_tables import TomlTable
+from audiokit.io.toml_tables import TomlTable, shown
 
 FORMAT_KEYS = ("encoding", "delimiter", "date_order", "decimal_comma", "cells", "response_limits", "sheet", "codes")
 """Keys that may stand at the top of cohort.toml and in a [[source]] table."""
+
+_LAST_ROW = 2**31
 
 CODE_WORDS = {
     "sex": ("female", "male", "unknown"),
@@ -83,7 +85,7 @@ def _read_limits(table: TomlTable) -> dict[int, int]:
         if not number or not LOWEST_DB_HL <= value <= HIGHEST_DB_HL or round(value * 10) / 10 != value:
             raise table.error(
                 key,
-                f"{value!r} is not a level of {LOWEST_DB_HL} to {HIGHEST_DB_HL} dB HL",
+                f"{shown(value)} is not a level of {LOWEST_DB_HL} to {HIGHEST_DB_HL} dB HL",
                 "write a number with at most one decimal",
             )
         found[int(key)] = round(value * 10)
@@ -109,8 +111,8 @@ def _read_codes(table: TomlTable) -> dict[str, dict[str, str]]:
 def _read_sheet(table: TomlTable) -> dict[str, Any]:
     table.only(("name", "header_row"))
     row = table.content.get("header_row")
-    if row is not None and (isinstance(row, bool) or not isinstance(row, int) or row < 1):
-        raise table.error("header_row", f"{row!r} is not a row number", "write a whole number from 1")
+    if row is not None and (isinstance(row, bool) or not isinstance(row, int) or not 1 <= row <= _LAST_ROW):
+        raise table.error("header_row", f"{shown(row)} is not a row number", "write a whole number from 1")
     return {"sheet": table.text("name"), "header_row": row}
 
 
@@ -118,7 +120,7 @@ def _read_encoding(table: TomlTable) -> str | None:
     name = table.text("encoding")
     try:
         "a".encode(name or "utf-8")
-    except LookupError:
+    except (LookupError, ValueError):
         raise table.error("encoding", f"{name!r} is not known", 'write for example "utf-8" or "cp1252"') from None
     return name
 

@@ -40,7 +40,7 @@ def _decimals(values: pa.Array) -> pa.Array:
 
 
 def _timestamps(values: pa.Array) -> pa.Array:
-    texts = pc.replace_substring(values.cast(pa.string()), " ", "T", max_replacements=1)
+    texts = pc.replace_substring_regex(values.cast(pa.string()), r"^(-?\d+-\d\d-\d\d) ", r"\1T")
     texts = pc.replace_substring_regex(texts, r"\.(\d*?)0+(Z|[+-]\d\d:?\d\d)?$", r".\1\2")
     texts = pc.replace_substring_regex(texts, r"\.(Z|[+-]\d\d:?\d\d)?$", r"\1")
     return pc.replace_substring_regex(texts, r"T00:00:00$", "")

@@ -7,7 +7,27 @@ from typing import Any
 from audiokit.core.errors import CohortError
 from audiokit.io.texts import number_text
 
+_LONGEST_SHOWN = 100
+_LARGEST_CODE = 10**15
 _TYPE_NAMES = {str: "text", bool: "true or false", dict: "a table", list: "a list"}
+
+
+def shown(value: Any) -> str:
+    """A value for a message, cut off where it is long."""
+    try:
+        text = repr(value)
+    except ValueError:  # Python writes no number of more than some thousand digits.
+        return "a number of thousands of digits"
+    return text if len(text) <= _LONGEST_SHOWN else text[: _LONGEST_SHOWN - 1] + "…"
+
+
+def _code(item: Any) -> str | None:
+    """A code as stripped text, a number by its shortest; None where it is neither text nor a number of some size."""
+    if isinstance(item, str):
+        return item.strip()
+    if isinstance(item, bool) or not isinstance(item, int | float) or not abs(item) <= _LARGEST_CODE:
+        return None
+    return str(item) if isinstance(item, int) else number_text(item)
 
 
 class TomlTable:
@@ -43,7 +63,7 @@ class TomlTable:
         """The key's value, of the given type; None where the key is absent."""
         value = self.content.get(key)
         if value is not None and not isinstance(value, kind):
-            raise self.error(key, f"{value!r} is not {_TYPE_NAMES[kind]}", f"write {_TYPE_NAMES[kind]}")
+            raise self.error(key, f"{shown(value)} is not {_TYPE_NAMES[kind]}", f"write {_TYPE_NAMES[kind]}")
         return value
 
     def text(self, key: str) -> str | None:
@@ -61,7 +81,7 @@ class TomlTable:
         """One of the allowed words; None where the key is absent."""
         value = self.text(key)
         if value is not None and value not in allowed:
-            raise self.error(key, f"{value!r} is not known", f"write one of {', '.join(allowed)}")
+            raise self.error(key, f"{shown(value)} is not known", f"write one of {', '.join(allowed)}")
         return value
 
     def texts(self, key: str) -> tuple[str, ...] | None:
@@ -71,19 +91,18 @@ class TomlTable:
             return None
         values = value if isinstance(value, list) else [value]
         if not values or not all(isinstance(v, str) and v.strip() for v in values):
-            raise self.error(key, f"{value!r} is neither a text nor a list of texts", 'write "a" or ["a", "b"]')
+            message = f"{shown(value)} is neither a text nor a list of texts"
+            raise self.error(key, message, 'write "a" or ["a", "b"]')
         return tuple(values)
 
     def codes(self, key: str) -> tuple[str, ...]:
         """A code or list of codes as stripped texts; numbers are taken by their shortest text."""
         value = self.content.get(key)
         values = value if isinstance(value, list) else [value]
-        found = []
-        for item in values:
-            if isinstance(item, bool) or not isinstance(item, str | int | float):
-                raise self.error(key, f"{value!r} is not a list of codes", 'write a list of texts, such as ["999"]')
-            found.append(item.strip() if isinstance(item, str) else number_text(float(item)))
-        return tuple(found)
+        found = tuple(code for item in values if (code := _code(item)) is not None)
+        if len(found) < len(values):
+            raise self.error(key, f"{shown(value)} is not a list of codes", 'write a list of texts, such as ["999"]')
+        return found
 
     def table(self, key: str) -> "TomlTable | None":
         """A table inside this one; None where the key is absent."""

@@ -3,6 +3,7 @@
 import datetime
 import io
 import re
+import warnings
 import zipfile
 from collections.abc import Sequence
 from typing import Any
@@ -20,6 +21,8 @@ _FORMULA_WITHOUT_RESULT = re.compile(
     rb"<(?:\w+:)?c\b(?P<cell>[^>]*)>\s*<(?:\w+:)?f\b[^>]*(?:/>|>[^<]*</(?:\w+:)?f>)\s*"
     rb"(?P<empty><(?:\w+:)?v\s*/>|<(?:\w+:)?v></(?:\w+:)?v>)?\s*</(?:\w+:)?c>"
 )
+
+_PLACE = re.compile(rb'<(?:\w+:)?(?:row|c)\b[^>]*?\br="([A-Z]*)([0-9]+)"')
 
 
 def cell_text(value: Any) -> str:
@@ -65,9 +68,8 @@ def _rows(sheet: Any) -> Any:
     return sheet.iter_rows(values_only=True)
 
 
-def _check_formulas(archive: zipfile.ZipFile, sheet: Any, file: str) -> None:
+def _check_formulas(content: bytes, sheet: Any, file: str) -> None:
     """A formula whose result was never stored would read as an empty cell: that is refused."""
-    content = archive.read(sheet._worksheet_path.lstrip("/"))
     for found in _FORMULA_WITHOUT_RESULT.finditer(content):
         cell = found.group("cell")
         if found.group("empty") and b't="str"' in cell:
@@ -78,6 +80,21 @@ def _check_formulas(archive: zipfile.ZipFile, sheet: Any, file: str) -> None:
             f"{file}, sheet {sheet.title!r}{where}: the formula has no stored result",
             "open the workbook in a spreadsheet program and save it, or replace formulas by their values",
         )
+
+
+def _check_order(content: bytes, sheet: Any, file: str) -> None:
+    """openpyxl drops rows, and cells of a row, that stand after one with a higher number: that is refused."""
+    last = (0, 0, "")
+    for found in _PLACE.finditer(content):
+        letters, number = found.group(1).decode(), int(found.group(2))
+        here = (number, len(letters), letters)
+        if here <= last:
+            what = f"cell {letters}{number}" if letters else f"row {number}"
+            raise CohortError(
+                f"{file}, sheet {sheet.title!r}: {what} stands out of order in the file",
+                "open the workbook in a spreadsheet program and save it again",
+            )
+        last = here
 
 
 def _filled_rows(sheet: Any) -> tuple[list[tuple[Any, ...]], list[int]]:
@@ -102,15 +119,19 @@ def read_xlsx(data: bytes, file: str, *, sheet: str | None = None, header_row: i
 
     sheet      : its name; by default the only sheet that holds data
     header_row : row of the headings, counted from 1; by default the first that is not empty
-    Raises CohortError where the workbook is damaged, the sheet or its rows are missing, or a formula has no result.
+    Raises CohortError where the workbook is damaged, the sheet or its rows are missing or out of order, or a formula
+    has no result.
     """
     try:
-        book = openpyxl.load_workbook(io.BytesIO(data), read_only=True, data_only=True)
-        chosen = _choose_sheet(book, sheet, file)
-        with zipfile.ZipFile(io.BytesIO(data)) as archive:
-            _check_formulas(archive, chosen, file)
-        chosen.reset_dimensions()
-        rows, numbers = _filled_rows(chosen)
+        with warnings.catch_warnings(action="ignore"):  # of dates that are none, styles, validations
+            book = openpyxl.load_workbook(io.BytesIO(data), read_only=True, data_only=True)
+            chosen = _choose_sheet(book, sheet, file)
+            with zipfile.ZipFile(io.BytesIO(data)) as archive:
+                content = archive.read(chosen._worksheet_path.lstrip("/"))
+            _check_formulas(content, chosen, file)
+            _check_order(content, chosen, file)
+            chosen.reset_dimensions()
+            rows, numbers = _filled_rows(chosen)
     except CohortError:
         raise
     except Exception as error:  # a damaged workbook raises whatever its broken part leads to

@@ -2,6 +2,7 @@
 
 import dataclasses
 import json
+import os
 from collections import deque
 from collections.abc import Callable, Iterator
 from concurrent.futures import ThreadPoolExecutor
@@ -30,6 +31,10 @@ FILES = frozenset(
         "summary.html",
     }
 )
+
+
+_TO_DISK = 1 << 27
+"""Bytes written between two orders to the disk."""
 
 
 def write_review(review: Review, out: str | Path, progress: Progress | None = None) -> None:
@@ -80,10 +85,15 @@ def _write_table(table: pa.Table, path: Path) -> None:
 
 def _write_shifts(review: Review, path: Path, progress: Progress | None) -> None:
     lines = ShiftLines(review)
-    with path.open("wb") as file:
+    with path.open("wb") as file, ThreadPoolExecutor(max_workers=1) as disk:
         file.write(HEADER)
+        waiting = 0
         for number, part in enumerate(_in_order(lines.of, lines.stretches), start=1):
-            file.write(part)
+            waiting += file.write(part)
+            if waiting > _TO_DISK:  # the disk works while lines are made, so that the end need not wait for it
+                file.flush()
+                disk.submit(os.fsync, file.fileno())
+                waiting = 0
             if progress is not None:
                 progress("writing shifts", number, len(lines.stretches))
 

@@ -1,6 +1,8 @@
 """The command on real files, with nothing replaced."""
 
 import csv
+import os
+from pathlib import Path
 
 import pytest
 
@@ -77,3 +79,24 @@ def test_unreadable_cohort_leaves_the_earlier_review(cohort, tmp_path, capsys):
         assert "Traceback" not in capsys.readouterr().err
     assert {entry.name: entry.read_bytes() for entry in out.iterdir()} == before
     assert sorted(entry.name for entry in tmp_path.iterdir()) == ["plant", "review"]
+
+
+def test_a_cohort_behind_links_in_a_circle_is_refused(tmp_path, capsys):
+    (tmp_path / "plant").symlink_to("plant")
+    assert review(tmp_path / "plant", tmp_path / "review") == 2
+    assert "plant is no path that can be followed" in capsys.readouterr().err
+
+
+def test_a_cohort_whose_folder_name_is_no_text_is_reviewed(cohort, tmp_path):
+    folder = Path(os.fsdecode(os.fsencode(tmp_path) + b"/caf\xe9"))
+    try:
+        cohort.rename(folder)
+    except OSError:
+        pytest.skip("this file system takes no such name")
+    assert review(folder, tmp_path / "review") == 0
+
+
+def test_a_date_that_no_file_may_hold_is_refused(cohort, tmp_path, capsys):
+    assert review(cohort, tmp_path / "review", "--as-of", "9999-12-31") == 2
+    assert "as_of: 9999-12-31 lies outside the years 1900 to 2200" in capsys.readouterr().err
+    assert not (tmp_path / "review").exists()

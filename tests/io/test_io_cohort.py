@@ -1,9 +1,12 @@
 """Reading a whole folder: broken files of every kind, and what is left of the order of things."""
 
 import datetime
+import gzip
+import io
 
+import openpyxl
 import pytest
-from cohort_folders import AS_OF, TESTS, counts, read, workbook, write
+from cohort_folders import AS_OF, PEOPLE, TESTS, counts, read, workbook, write
 
 from audiokit.core.errors import CohortError
 from audiokit.io.cohort import read_cohort
@@ -18,6 +21,9 @@ OLE = b"\xd0\xcf\x11\xe0\xa1\xb1\x1a\xe1" + b"\0" * 600
         ("tests_csv", workbook([["a"], [1]]), ["tests.csv", "Excel workbook", "suffix"]),
         ("tests_csv", OLE, ["password-protected", "without password"]),
         ("tests_csv", b"PAR1....", ["parquet file"]),
+        ("tests_csv", gzip.compress(TESTS.encode()), ["packed with gzip", "unpack"]),
+        ("tests_csv", b"%PDF-1.7", ["PDF document"]),
+        ("tests_csv", b"\x89PNG\r\n\x1a\n", ["a picture"]),
         ("tests_csv", bytes(range(256)), ["tests.csv", "line 1"]),
         ("tests_csv", TESTS.encode("utf-16-le"), ["tests.csv", "zero byte"]),
         ("tests_csv", TESTS.replace(",", ";"), ["tests.csv", 'delimiter = ";"']),
@@ -133,3 +139,33 @@ encoding = "cp1252"
     assert cohort.grid.purpose.tolist() == [0, 0, 2]
     assert cohort.grid.details["remarks"].tolist() == ["", "né", ""]
     assert cohort.grid.details["source_row"].tolist() == [2, 2, 4]
+
+
+def test_a_workbook_of_people_and_tests_goes_by_its_sheets(tmp_path):
+    book = openpyxl.Workbook()
+    staff, tested = book.active, book.create_sheet("Tested")
+    staff.title = "Staff"
+    for sheet, lines in ((staff, PEOPLE), (tested, TESTS + "P9,2020-01-01,,1,1\n")):
+        for line in lines.splitlines():
+            sheet.append(line.split(","))
+    data = io.BytesIO()
+    book.save(data)
+    toml = "".join(
+        f'[[source]]\n{kind} = "book.xlsx"\n[source.sheet]\nname = "{sheet}"\n'
+        for kind, sheet in (("people", "Staff"), ("tests", "Tested"))
+    )
+    folder = write(tmp_path, book_xlsx=data.getvalue(), cohort_toml=toml)
+    (folder / "tests.csv").unlink(missing_ok=True)
+    cohort = read(folder)
+    assert counts(cohort) == {"book.xlsx [Staff]": (2, 2, 0), "book.xlsx [Tested]": (3, 2, 1)}
+    assert cohort.quarantine["file"].tolist() == ["book.xlsx [Tested]"]
+
+
+def test_links_that_lead_nowhere_are_named(tmp_path):
+    folder = write(tmp_path)
+    (folder / "tests.csv").unlink()
+    for target in ("gone.csv", "tests.csv"):
+        (folder / "tests.csv").symlink_to(target)
+        with pytest.raises(CohortError, match=r"tests.csv: (a link to a file that is not there|.*symbolic links)"):
+            read(folder)
+        (folder / "tests.csv").unlink()

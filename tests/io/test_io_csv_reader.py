@@ -69,6 +69,8 @@ def test_other_encodings_are_named_by_the_user():
         (b'a,b\n1,"2\n3,4\n', ["line 2", "never closed"]),
         (b'a,b\n1,5"\n1,"2\n3,4\n', ["line 3", "never closed"]),
         (b"a,b,a\n1,2,3\n", ["columns 1 and 3", "'a'"]),
+        (b'a,b\n1,2\n3,"open\n4,5\n6,"open\n7,8\n', ["line 3", "closes on a later line", "in the middle of a cell"]),
+        (b'a,b\n"open,1\n"other,2\n', ["line 2", "closes on a later line"]),
     ],
 )
 def test_errors_name_the_place_and_the_mend(data, words):
@@ -105,3 +107,14 @@ def test_whatever_the_bytes_it_is_a_table_or_a_clear_error(data):
         assert error.message.startswith("t.csv") and error.mend
     else:
         assert all(len(column) == len(raw) for column in raw.columns)
+
+
+def test_a_quotation_mark_that_closes_inside_a_cell_of_one_line_is_read_over():
+    assert table('a,b\n1,"left" ear sore\n2,"x\ny"\n') == [(2, ["1", "left ear sore"]), (3, ["2", "x\ny"])]
+
+
+@pytest.mark.parametrize("encoding", ["punycode", "idna", "utf-7"])
+def test_encodings_of_other_things_than_tables_make_a_clear_error(encoding):
+    with pytest.raises(CohortError, match=rf"t\.csv.*not text in {encoding}") as error:
+        read_csv(b"a,b\n" + b"+2AA-,x" * 60 + b"\xff", "t.csv", encoding=encoding)
+    assert error.value.mend

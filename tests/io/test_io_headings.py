@@ -34,6 +34,9 @@ def refuse(tmp_path, words: list[str], **files: str | bytes) -> None:
         ("person_id,tested_on,ear,frequency_hz,threshold,left_1000\nP1,2020-01-01,r,1,1,1\n", ["keep one of the two"]),
         ("person_id,tested_on,right_1000,right_1000\nP1,2020-01-01,1,1\n", ["columns 3 and 4", "'right_1000'"]),
         ("person_id,tested_on, right_1000,right_1000 \nP1,2020-01-01,1,1\n", ["columns 3 and 4"]),
+        ("person_id,tested_on,right_1000,Valid\nP1,2020-01-01,1,no\n", ["'Valid'", "not be read", 'valid = "Valid"']),
+        ("person_id,tested_on,right_1000,Left 1000\nP1,2020-01-01,1,1\n", ["'Left 1000'", "written left_1000"]),
+        ("Tests of 2020,\nperson_id,tested_on\n", ["person_id and tested_on", "header_row under [sheet]"]),
     ],
 )
 def test_tests_tables_that_cannot_be_read(tmp_path, tests, words):
@@ -109,3 +112,21 @@ def test_people_alone_are_described_by_their_own_table(tmp_path):
     people = PEOPLE.replace("person_id", "No")
     folder = write(tmp_path, people_csv=people, cohort_toml='[columns.people]\nperson_id = "No"')
     assert len(read(folder).people) == 2
+
+
+def test_a_name_written_in_another_way_beside_ours_is_another_column(tmp_path):
+    tests = "person_id,tested_on,right_1000,purpose,Purpose\nP1,2020-01-01,10,baseline,x\n"
+    assert read(write(tmp_path, tests_csv=tests)).grid.purpose.tolist() == [1]
+
+
+def test_a_name_written_in_another_way_may_be_mapped(tmp_path):
+    tests = "person_id,tested_on,right_1000,Purpose\nP1,2020-01-01,10,baseline\n"
+    folder = write(tmp_path, tests_csv=tests, cohort_toml='[columns.tests]\npurpose = "Purpose"\n')
+    assert read(folder).grid.purpose.tolist() == [1]
+
+
+def test_no_more_headings_are_listed_than_can_be_read(tmp_path):
+    headings = ["h" * 1000, *(f"h{i}" for i in range(5000))]
+    with pytest.raises(CohortError) as error:
+        read(write(tmp_path, tests_csv=",".join(headings) + "\n"))
+    assert len(str(error.value)) < 1000 and "h58, …" in str(error.value)

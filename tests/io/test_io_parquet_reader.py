@@ -43,6 +43,10 @@ MIDNIGHT = datetime.datetime(2024, 1, 5)
         (pa.array([MOMENT, MIDNIGHT, None], pa.timestamp("ns")), ["2024-01-05T08:30:00.25", "2024-01-05", ""]),
         (pa.array([MIDNIGHT] * 3, pa.timestamp("s")), ["2024-01-05"] * 3),
         (pa.array([MIDNIGHT] * 3, pa.timestamp("us", "UTC")), ["2024-01-05T00:00:00Z"] * 3),
+        (
+            pa.array([2**62, None, 0]).cast(pa.timestamp("us")),
+            ["<value out of range: 4611686018427387904>", "", "1970-01-01"],
+        ),
         (pa.nulls(3), ["", "", ""]),
     ],
 )
@@ -78,6 +82,8 @@ def test_raw_texts_of_some_rows_are_the_same_before_and_after_encoding():
         (stored(a=pa.array(["x"] * 50))[:-20] + b"PAR1", "damaged"),
         (stored(a=pa.array([[1], [2]])), "column 'a' holds list"),
         (stored(a=pa.array([b"x"])), "column 'a' holds binary"),
+        (stored(a=pa.array([b"x", b"\xff"]).view(pa.string())), "damaged"),
+        (stored(a=pa.array([b"x", b"\xff"]).view(pa.string()).dictionary_encode()), "damaged"),
     ],
 )
 def test_damaged_nested_and_empty_files(data, words):

@@ -52,3 +52,13 @@ def test_the_partner_of_a_conflict_is_named(tmp_path):
     assert partners[0].tolist() == [f"tests.csv, row {n}" for n in (4, 4, 2, 2)]
     firsts = frame[frame["code"] == "duplicate_row"].set_index("row")["problem"].str.extract(r"to (tests.csv, row \d)")
     assert firsts[0].to_dict() == {3: "tests.csv, row 2", 5: "tests.csv, row 4"}
+
+
+def test_rows_written_alike_in_files_of_other_date_orders_are_no_repeats(tmp_path):
+    tests = "person_id,tested_on,right_1000\nP1,03/04/2020,10\nP1,03/04/2020,20\n"
+    toml = "".join(f'[[source]]\ntests = "{order}.csv"\ndate_order = "{order}"\n' for order in ("dmy", "mdy"))
+    cohort = read(write(tmp_path, dmy_csv=tests, mdy_csv=tests, cohort_toml=toml))
+    assert problems(cohort) == []
+    assert sorted(cohort.grid.test_id.to_pylist()) == [
+        "P1@2020-03-04", "P1@2020-03-04#2", "P1@2020-04-03", "P1@2020-04-03#2",
+    ]  # fmt: skip

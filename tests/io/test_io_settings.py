@@ -1,6 +1,8 @@
 """cohort.toml: every key, what overrides what, and an error with its mend for everything else."""
 
 import datetime
+import os
+from pathlib import Path
 
 import pytest
 from cohort_folders import AS_OF, PEOPLE, TESTS, read, write
@@ -166,6 +168,18 @@ def test_a_source_may_describe_the_people(tmp_path):
             ["two [[source]] tables describe tests.csv"],
         ),
         ("[files]\ntests = ['tests.csv', 'tests.csv']", ["a file is named twice"]),
+        ("[files]\ntests = ['tests.csv', './tests.csv']", ["a file is named twice"]),
+        ("[[source]]\ntests = ['tests.csv', './tests.csv']", ["two [[source]] tables describe tests.csv"]),
+        ('[files]\ntests = "a\\u0000.csv"', ["[files] tests", "zero character"]),
+        ("[cells]\nno_response = [nan]", ["[cells] no_response", "list of codes"]),
+        (f"[cells]\nno_response = [{'9' * 400}]", ["[cells] no_response", "list of codes"]),
+        ("encoding = 'undefined'", ["encoding", "'undefined' is not known"]),
+        ('encoding = "utf\\u0000"', ["encoding", "is not known"]),
+        (f"name = 0x{'f' * 9000}", ["name", "thousands of digits", "not text"]),
+        (f"as_of = 0x{'f' * 9000}", ["as_of", "thousands of digits", "not a date"]),
+        (f"[sheet]\nheader_row = 0x{'f' * 9000}", ["header_row", "not a row number"]),
+        (f"name = {'9' * 5000}", ["cohort.toml", "digits"]),
+        (f"name = {'[' * 5000}{']' * 5000}", ["cohort.toml", "nested too deep"]),
         ("name = 'a'\nname = 'b'", ["cohort.toml", "line 2"]),
         ("name = unquoted", ["cohort.toml", "line 1"]),
     ],
@@ -213,3 +227,34 @@ def test_settings_that_are_no_text(tmp_path):
     (tmp_path / "cohort.toml").mkdir()
     with pytest.raises(CohortError, match=r"cohort.toml cannot be read"):
         read_plan(tmp_path)
+
+
+@pytest.mark.parametrize("date", [datetime.date(1899, 12, 31), datetime.date(2201, 1, 1), datetime.date.max])
+def test_a_review_speaks_for_a_date_that_files_may_hold(tmp_path, date):
+    folder = write(tmp_path)
+    with pytest.raises(CohortError, match=f"as_of: {date} lies outside the years 1900 to 2200"):
+        read_cohort(folder, as_of=date)
+    write(tmp_path, cohort_toml=f"as_of = {date}\n")
+    with pytest.raises(CohortError, match=f"as_of: {date} lies outside the years 1900 to 2200"):
+        read_cohort(folder)
+
+
+def test_the_current_folder_is_called_by_its_name(tmp_path, monkeypatch):
+    monkeypatch.chdir(write(tmp_path / "Plant"))
+    (tmp_path / "Plant" / "tests.csv").unlink()
+    with pytest.raises(CohortError, match=r"^Plant: there is no tests table"):
+        read_plan(Path())
+
+
+def test_a_folder_whose_name_is_no_text_has_a_name_that_is(tmp_path):
+    folder = Path(os.fsdecode(os.fsencode(tmp_path) + b"/caf\xe9"))
+    try:
+        write(folder)
+    except OSError:
+        pytest.skip("this file system takes no such name")
+    assert read_plan(folder).settings.name == "caf\N{REPLACEMENT CHARACTER}"
+
+
+def test_a_file_written_in_two_ways_is_one_file(tmp_path):
+    found = plan(tmp_path, "[[source]]\ntests = './tests.csv'\ndate_order = 'dmy'\n")
+    assert [(f.name, f.settings.date_order) for f in found.tests] == [("tests.csv", "dmy")]

@@ -114,6 +114,7 @@ def test_optional_columns(tmp_path):
          [[2, "valid", "unknown_valid"], [2, "hours_since_noise", "unreadable_number"],
           [2, "right_1000_recheck", "out_of_range"]]),
         ("P1,2020-01-01,,1,2,=T,,,,,\n", [[2, "test_id", "formula_like_id"]]),
+        ("P9,2020-01-01,,1,2,=T,,,,,\n", [[2, "person_id", "unknown_person"], [2, "test_id", "formula_like_id"]]),
         ("P1,2020-01-01,,1,2,T,,,,,\nP1,2020-01-02,,1,2,T,,,,,\nP1,2020-01-03,,1,2,U,,,,,\n",
          [[2, "test_id", "conflicting_key"], [3, "test_id", "conflicting_key"]]),
         ("P1,2020-01-01,,1,2,T,,,,,\nP1,2020-01-01,,1,2, T,,,,,\n", [[3, "", "duplicate_row"]]),

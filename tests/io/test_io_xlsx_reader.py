@@ -121,3 +121,34 @@ def test_damaged_and_empty_workbooks(data, words):
 def test_a_missing_heading_row_is_named():
     with pytest.raises(CohortError, match="no row 7 with headings"):
         read_xlsx(workbook([["a"], [1]]), "t.xlsx", header_row=7)
+
+
+@pytest.mark.parametrize(
+    ("old", "new", "words"),
+    [
+        (b'<row r="3"', b'<row r="0"', "row 0 stands out of order"),
+        (b'<row r="4"', b'<row r="3"', "row 3 stands out of order"),
+        (b'r="B3"', b'r="A3"', "cell A3 stands out of order"),
+        (b'r="A3"', b'r="C3"', "cell B3 stands out of order"),
+    ],
+)
+def test_rows_and_cells_out_of_order_would_be_dropped_and_are_refused(old, new, words):
+    data = rewritten(workbook([["a", "b"], [1, 2], [3, 4], [5, 6]]), lambda xml: xml.replace(old, new, 1))
+    with pytest.raises(CohortError, match=words):
+        read_xlsx(data, "t.xlsx")
+
+
+def test_columns_beyond_z_are_in_order():
+    row = [f"h{i}" for i in range(60)]
+    assert read_xlsx(workbook([row, list(range(60))]), "t.xlsx").headings == tuple(row)
+
+
+def test_what_the_workbook_library_warns_of_is_not_shown(recwarn):
+    book = openpyxl.Workbook()
+    for value in ("a", 99999999999):
+        book.active.append([value])
+    book.active["A2"].number_format = "yyyy-mm-dd"
+    data = io.BytesIO()
+    book.save(data)
+    assert read_xlsx(data.getvalue(), "t.xlsx").encoded("a").texts().to_pylist() == ["#VALUE!"]
+    assert not recwarn.list
