@@ -132,8 +132,12 @@ def _entry_text(entry: dict[Any, Any], undone_by: int | None) -> str:
         what += f", for tests after {entry['takes_effect_on']}"
     if undone_by is not None:
         what += f" [undone by {undone_by}]"
-    reason = entry["reason"].replace("\n", "\n    ")
-    return f"{entry['decision_id']}  {entry['recorded_at']}  {what}\n    {entry['reviewer']}, {entry['role']}: {reason}"
+    lines = (
+        f"{entry['decision_id']}  {entry['recorded_at']}  {what}",
+        f"    {entry['reviewer']}, {entry['role']}: {entry['reason']}",
+    )
+    # Line breaks inside an entry are indented, so that no text looks like an entry of its own.
+    return "\n".join(line.replace("\n", "\n    ") for line in lines)
 
 
 def _subject(person: str, ear: str | None, test: str | None) -> str:

@@ -59,7 +59,7 @@ def reading(folder: Path) -> Iterator[sqlite3.Connection | None]:
 
     Raises DecisionError: no such folder; file damaged, foreign, of another version, locked or without rights.
     """
-    path = _existing_folder(folder) / FILE_NAME
+    path = _decisions_file(folder)
     if not path.exists():
         if path.is_symlink():
             raise DecisionError(f"{path} is a link to a file that is not there", "mend the link, or remove it")
@@ -75,7 +75,7 @@ def appending(folder: Path) -> Iterator[sqlite3.Connection]:
 
     Raises DecisionError as `reading` does, and where the folder or file cannot be written; then nothing is recorded.
     """
-    path = _existing_folder(folder) / FILE_NAME
+    path = _decisions_file(folder)
     if not path.exists():
         try:
             create_file(path, _empty_database())
@@ -85,10 +85,18 @@ def appending(folder: Path) -> Iterator[sqlite3.Connection]:
         yield connection
 
 
-def _existing_folder(folder: Path) -> Path:
-    if not folder.is_dir():
-        raise DecisionError(f"{folder} is not a folder", "give the cohort folder, the one that holds the tests")
-    return folder.resolve()
+def _decisions_file(folder: Path) -> Path:
+    """Where the folder's decisions are, or would be."""
+    try:
+        if not folder.is_dir():
+            raise DecisionError(f"{folder} is not a folder", "give the cohort folder, the one that holds the tests")
+        path = folder.resolve() / FILE_NAME
+        path.exists()
+    except OSError as error:
+        raise DecisionError(
+            f"{folder} cannot be read ({error.strerror})", "get the right to read the folder"
+        ) from error
+    return path
 
 
 def _empty_database() -> bytes:

@@ -15,7 +15,7 @@ from audiokit.surveillance.inputs import Inputs
 from audiokit.surveillance.revision import OtherFrequencies, choose
 from audiokit.surveillance.walk import Changes, Round, Trail, candidates, walk, walk_fixed
 
-BLOCK_TESTS = 1 << 17
+BLOCK_TESTS = 1 << 18
 """Tests in a block: small enough for the cache, large enough that the cost of each numpy call vanishes."""
 
 

@@ -1,6 +1,7 @@
 """The yearly review: one cohort against its rulebooks, as known on a date."""
 
 from collections.abc import Callable
+from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass
 from functools import cached_property
 from typing import Any
@@ -133,13 +134,16 @@ def _review_book(
     plan = Plan(as_of_day, automatic, settings.recording_baseline == "in_force")
     other = _other_frequencies(grid, rulebook.criterion(rulebook.revision.criterion))
     findings = run_mechanics(rulebook, history, inputs, other, decisions.baselines, plan, progress)
-    events = {
-        name: find_events(found.trail, history, as_of_day, found.criterion.retest_window_days.value)
-        for name, found in findings.items()
-    }
-    revised = findings[rulebook.revision.criterion]
-    proposals = unanswered(revised.proposals, decisions)
-    baselines = baseline_history(history, revised.trail.changes, proposals)
+    with ThreadPoolExecutor() as pool:
+        windows = {name: found.criterion.retest_window_days.value for name, found in findings.items()}
+        waiting = {
+            name: pool.submit(find_events, found.trail, history, as_of_day, windows[name])
+            for name, found in findings.items()
+        }
+        revised = findings[rulebook.revision.criterion]
+        proposals = unanswered(revised.proposals, decisions)
+        baselines = baseline_history(history, revised.trail.changes, proposals)
+        events = {name: found.result() for name, found in waiting.items()}
     return BookReview(rulebook, findings, inputs.sums, inputs.ages, events, baselines, decisions)
 
 

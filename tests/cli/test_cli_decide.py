@@ -129,8 +129,17 @@ def test_undo_and_list(cohort, capsys):
         f"2  TIME  revise_baseline, person E-1, left ear, test T-12, for tests after {TODAY}\n"
         "    R. Example, audiologist, licence X-1: ear infection\n"
         "3  TIME  undo of 1\n"
-        "    R. Example, audiologist, licence X-1: wrong ear\n    look again\n"
+        "    R. Example, audiologist, licence X-1: wrong ear\n        look again\n"
     )
+
+
+def test_no_text_of_an_entry_looks_like_an_entry_of_its_own(cohort, capsys):
+    signed = ["--reviewer", "R. Example\n2  2020-01-01", "--role", "x\n3  y", "--reason", "z\n4"]
+    assert decide(cohort, "note", "--person", "E-1", *signed) == 0
+    capsys.readouterr()
+    assert decide(cohort, "list") == 0
+    first, *more = capsys.readouterr().out.splitlines()
+    assert first.startswith("1  ") and len(more) == 4 and all(line.startswith("    ") for line in more)
 
 
 def test_undo_needs_no_readable_tables(cohort):

@@ -1,10 +1,12 @@
 """The database is append-only, and one that is not sound is refused, never read in part."""
 
+import os
 import sqlite3
 import time
 from contextlib import closing
 
 import pytest
+from ordinary_user import open_folder, run_as_ordinary_user
 
 from audiokit.core.errors import DecisionError
 from audiokit.io import atomic, decisions_store
@@ -190,3 +192,24 @@ def test_entry_is_not_recorded_when_the_commit_fails(folder, monkeypatch):
         record_decision(folder, **FIELDS)
     monkeypatch.undo()
     assert len(read_log(folder)) == 3
+
+
+@pytest.mark.skipif(os.name == "nt", reason="Windows has no such modes")
+@pytest.mark.parametrize("mode", [0o000, 0o444])
+def test_a_closed_folder_is_said_with_the_mend(mode):
+    imports = """
+from audiokit.core.errors import DecisionError
+from audiokit.io.decisions import read_log, record_decision
+"""
+    code = f"""
+for call in (read_log, lambda folder: record_decision(folder, **{FIELDS!r})):
+    try:
+        call(Path(sys.argv[1]))
+    except DecisionError as error:
+        print(error)
+"""
+    with open_folder() as folder:
+        (folder / "plant").mkdir()
+        (folder / "plant").chmod(mode)
+        said = run_as_ordinary_user(imports, code, folder / "plant")
+    assert said.count("plant cannot be read (Permission denied)\n  mend: get the right") == 2

@@ -113,8 +113,11 @@ def test_a_quotation_mark_that_closes_inside_a_cell_of_one_line_is_read_over():
     assert table('a,b\n1,"left" ear sore\n2,"x\ny"\n') == [(2, ["1", "left ear sore"]), (3, ["2", "x\ny"])]
 
 
-@pytest.mark.parametrize("encoding", ["punycode", "idna", "utf-7"])
-def test_encodings_of_other_things_than_tables_make_a_clear_error(encoding):
+@pytest.mark.parametrize(
+    ("encoding", "data"),
+    [("punycode", b"person_id,sex\nP1,f-\n"), ("utf-7", b"a,b\n+2AA-,x\n")],
+)
+def test_encodings_of_other_things_than_tables_make_a_clear_error(encoding, data):
     with pytest.raises(CohortError, match=rf"t\.csv.*not text in {encoding}") as error:
-        read_csv(b"a,b\n" + b"+2AA-,x" * 60 + b"\xff", "t.csv", encoding=encoding)
+        read_csv(data, "t.csv", encoding=encoding)
     assert error.value.mend
