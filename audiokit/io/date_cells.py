@@ -17,6 +17,7 @@ NO_STAMP = np.iinfo(np.int64).min
 
 _SECONDS = r"(?P<second>[0-9]{2})(?:[.,](?P<fraction>[0-9]{1,9})[0-9]*)?"
 _TIME = rf"(?:[Tt ](?P<hour>[0-9]{{2}}):(?P<minute>[0-9]{{2}})(?::{_SECONDS})?)?"
+_SHORT_TIME = _TIME.replace("<hour>[0-9]{2}", "<hour>[0-9]{1,2}")
 _ISO = r"(?P<year>[0-9]{4})-(?P<month>[0-9]{2})-(?P<day>[0-9]{2})"
 _ZONE = r" ?(?:[Zz]|[+\-\x{2212}][0-9]{2}(?::?[0-9]{2})?)"
 _YEAR, _MONTH, _DAY = r"(?P<year>[0-9]{4})", r"(?P<month>[0-9]{1,2})", r"(?P<day>[0-9]{1,2})"
@@ -54,9 +55,9 @@ def _part(found: pa.StructArray, name: str) -> NDArray[np.int64]:
     return pc.if_else(pc.equal(texts, ""), "0", texts).cast(pa.int64()).fill_null(0).to_numpy(zero_copy_only=False)
 
 
-def _fields(texts: pa.StringArray, date: str) -> tuple[NDArray[np.bool_], dict[str, NDArray[np.int64]]]:
+def _fields(texts: pa.StringArray, form: str) -> tuple[NDArray[np.bool_], dict[str, NDArray[np.int64]]]:
     """Which texts have the form, and their numbers."""
-    found = pc.extract_regex(texts, f"^{date}{_TIME}$")
+    found = pc.extract_regex(texts, f"^{form}$")
     numbers = {name: _part(found, name) for name in _PARTS}
     padded = pc.utf8_rpad(pc.struct_field(found, "fraction"), 9, "0")
     numbers["nanosecond"] = padded.cast(pa.int64()).fill_null(0).to_numpy(zero_copy_only=False)
@@ -66,12 +67,13 @@ def _fields(texts: pa.StringArray, date: str) -> tuple[NDArray[np.bool_], dict[s
 def parse_dates(texts: pa.StringArray, order: str | None = None, *, first_year: int = FIRST_YEAR) -> ParsedDates:
     """Dates of distinct, stripped texts.
 
-    order : one of DATE_ORDERS where the site has set it, accepted beside ISO, with / . or - between the parts
+    order : one of DATE_ORDERS where the site has set it, accepted beside ISO, with / . or - between the parts, hours
+            with one digit or two
     """
-    formed, numbers = _fields(texts, _ISO)
+    formed, numbers = _fields(texts, f"{_ISO}{_TIME}")
     if order is not None:
         first, second, third = _ORDERS[order]
-        other, more = _fields(texts, f"{first}[/.\\-]{second}[/.\\-]{third}")
+        other, more = _fields(texts, f"{first}[/.\\-]{second}[/.\\-]{third}{_SHORT_TIME}")
         numbers = {name: np.where(formed, numbers[name], more[name]) for name in numbers}
         formed = formed | other
     year, month, day = numbers["year"], numbers["month"], numbers["day"]

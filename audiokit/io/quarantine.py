@@ -156,7 +156,7 @@ class ProblemLog:
                 "column": guard(fields["column"]).to_pandas(),
                 "value": guard(values).to_pandas(),
                 "code": _constant(batch.code, length).to_pandas(),
-                "problem": render(kind.problem, length, **fields).to_pandas(),
+                "problem": guard(render(kind.problem, length, **fields)).to_pandas(),
                 "mend": render(kind.mend, length, **fields).to_pandas(),
                 "raw_json": raw_json,
                 "place": place,

@@ -19,6 +19,8 @@ _SIGNS = {
 
 def _read_bytes(source: SourceFile) -> bytes:
     try:
+        if source.path.exists() and not (source.path.is_file() or source.path.is_dir()):
+            raise CohortError(f"{source.name}: this is a pipe or a device, not a file", "name the table itself")
         return source.path.read_bytes()
     except FileNotFoundError:
         if source.path.is_symlink():

@@ -181,8 +181,10 @@ def _files(
         raise CohortError(f"{FILE_NAME}, [files] {kind}: a file is named twice", "name each file once")
     names += [name for name in own if name not in names]
     if not names:
+        alike = sorted(entry.name for entry in folder.iterdir() if entry.stem.casefold() == kind and entry.is_file())
+        hint = f"; {' and '.join(alike)} cannot be taken for it" if alike else ""
         raise CohortError(
-            f"{_title(folder)}: there is no {kind} table ({', '.join(kind + suffix for suffix in SUFFIXES)})",
+            f"{_title(folder)}: there is no {kind} table ({', '.join(kind + suffix for suffix in SUFFIXES)}){hint}",
             f'put it into the folder, or name it: [files] {kind} = "…" in {FILE_NAME}',
         )
     general = replace(shared, **_top_columns(table, kind))

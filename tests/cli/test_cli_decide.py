@@ -129,7 +129,7 @@ def test_undo_and_list(cohort, capsys):
         f"2  TIME  revise_baseline, person E-1, left ear, test T-12, for tests after {TODAY}\n"
         "    R. Example, audiologist, licence X-1: ear infection\n"
         "3  TIME  undo of 1\n"
-        "    R. Example, audiologist, licence X-1: wrong ear\n        look again\n"
+        "    R. Example, audiologist, licence X-1: wrong ear\n    look again\n"
     )
 
 

@@ -3,6 +3,7 @@
 import datetime
 import gzip
 import io
+import os
 
 import openpyxl
 import pytest
@@ -169,3 +170,12 @@ def test_links_that_lead_nowhere_are_named(tmp_path):
         with pytest.raises(CohortError, match=r"tests.csv: (a link to a file that is not there|.*symbolic links)"):
             read(folder)
         (folder / "tests.csv").unlink()
+
+
+@pytest.mark.skipif(os.name == "nt", reason="Windows has no such devices")
+def test_pipes_and_devices_are_not_read(tmp_path):
+    folder = write(tmp_path)
+    (folder / "tests.csv").unlink()
+    (folder / "tests.csv").symlink_to("/dev/null")
+    with pytest.raises(CohortError, match=r"tests.csv: this is a pipe or a device"):
+        read(folder)

@@ -71,6 +71,7 @@ def test_a_set_order_is_accepted_beside_iso_and_with_a_time():
     assert parse("2024-01-05", "dmy") == parse("1/5/2024", "mdy") == (day, day * NANOSECONDS)
     assert parse("5/1/24", "dmy") == "unreadable_date"
     assert parse("5/1-2024", "dmy") == (day, day * NANOSECONDS)
+    assert parse("05/01/2024 8:30", "dmy") == parse("1/5/2024 08:30", "mdy") == parse("2024-01-05T08:30")
 
 
 def test_blank_is_blank():

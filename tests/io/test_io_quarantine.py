@@ -138,3 +138,11 @@ def test_guard_and_shorten_on_nothing():
 def test_texts_of_a_slice_are_guarded_by_their_own_first_letter():
     sliced = pa.array(["=a", "b", "", "=c"]).slice(1)
     assert guard(sliced).to_pylist() == ["b", "", "'=c"]
+
+
+def test_the_name_of_a_file_does_not_make_a_problem_a_formula(tmp_path):
+    folder = write(tmp_path, cohort_toml='[files]\ntests = "=x.csv"\n')
+    (folder / "=x.csv").write_text("person_id,tested_on,right_1000\nP9,2020-01-01,1\n")
+    frame = read(folder).quarantine
+    assert frame["file"].tolist() == ["'=x.csv"]
+    assert frame["problem"].iloc[0].startswith("'=x.csv, row 2, column person_id:")

@@ -203,6 +203,10 @@ def test_a_missing_table_is_named(tmp_path, kind):
     (write(tmp_path) / f"{kind}.csv").unlink()
     with pytest.raises(CohortError, match=f"there is no {kind} table"):
         read_plan(tmp_path)
+    for name in (f"{kind.upper()}.csv", f"{kind}.xls"):
+        (tmp_path / name).touch()
+    with pytest.raises(CohortError, match=rf"there is no {kind} table .*; {kind.upper()}.csv and {kind}.xls cannot be"):
+        read_plan(tmp_path)
 
 
 def test_folders_that_are_none(tmp_path, monkeypatch):

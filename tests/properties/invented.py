@@ -16,7 +16,7 @@ GAPS = (0, 1, 15, 29, 30, 31, 90, 181, 184, 365, 366)
 PURPOSES = ("annual", "annual", "annual", "retest", "retest", "", "other", "baseline")
 OTHER_CELLS = ("10", "15", "NR@90", "CNT", "")
 
-few = settings(deadline=None, max_examples=15, suppress_health_check=list(HealthCheck))
+few = settings(deadline=None, max_examples=10, suppress_health_check=list(HealthCheck))
 """Every example is a whole review or several, so they are few, and each holds several people."""
 
 

@@ -70,7 +70,7 @@ def test_unknown_sex_or_birth_is_said(tmp_path, person) -> None:
     for criterion in (STS, RECORDABLE):
         row = tables.one("shifts", ear="right", criterion=criterion)
         assert (row["correction_db"], row["value_db"]) == (0, 10)
-        assert "no age correction (sex or birth not recorded)" in row["why"]
+        assert "; no age correction (sex or birth not recorded); corrected shift = 10 dB" in row["why"]
     assert tables.met() == {"P now": "yes"}
     plain = reviewed(tmp_path, age_correction=False).find("shifts")
     assert plain and all(row["correction_db"] == 0 and "age" not in row["why"] for row in plain)

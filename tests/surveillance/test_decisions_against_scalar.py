@@ -17,7 +17,7 @@ from tests.surveillance.small_cohorts import SIGNED
 
 REVIEWED = [combination for combination in COMBINATIONS if combination[1] == "reviewed"]
 CASES = [(101, REVIEWED[0]), (102, REVIEWED[1]), (103, REVIEWED[2]), (104, REVIEWED[3]), (105, COMBINATIONS[2])]
-CASES += [(seed, REVIEWED[seed % 4]) for seed in range(106, 112)]
+CASES += [(seed, REVIEWED[seed % 4]) for seed in range(106, 110)]
 
 
 def decided(folder: Path, cohort: HostileCohort, seed: int) -> list[Decision]:
@@ -70,10 +70,10 @@ def test_no_cell_differs(tmp_path, seed, combination) -> None:
 def test_the_cases_occur(tmp_path) -> None:
     """Random decisions that change nothing would test nothing; told by the scalar review alone."""
     seen: Counter[str] = Counter()
-    for seed, combination in CASES[:6]:
+    for seed, combination in CASES[:4]:
         cohort = hostile_cohort(seed, 25, combination)
         (tmp_path / str(seed)).mkdir()
         seen.update(cases(cohort, decided(tmp_path / str(seed), cohort, seed)))
     for what in ("superseded", "proposed", "idle", "proposals fewer", "verdicts changed", "lines closed"):
         assert seen[what] > 0, what
-    assert seen["decision"] > 40
+    assert seen["decision"] > 25

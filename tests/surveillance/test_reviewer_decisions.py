@@ -268,6 +268,16 @@ def test_a_proposal_of_the_last_test_is_answered_from_its_day_on(tmp_path, effec
     assert len(idle(tables)) == (effect > "2030-01-01")
 
 
+def test_proposals_are_those_of_the_present_sequence(tmp_path) -> None:
+    """A retest after the effect reveals one on the old sequence; it is listed until a test has begun the new one."""
+    rows = [*yearly(0, 15, 16), hearing_test("R", "2022-06-20", 14, purpose="retest")]
+    folder = write_cohort(tmp_path, [*rows, hearing_test("D", "2023-06-01", 5)])
+    decide(folder, "revise_baseline", "A", "right", on="2022-06-10")
+    tables = reviewed(folder, as_of="2022-12-31")
+    assert tables.history()[-1] == ("R", "2022-06-20", "", "persistent_shift", "proposed")
+    assert proposals(reviewed(folder)) == []
+
+
 def test_a_refused_proposal_disappears_and_nothing_else_changes(tmp_path) -> None:
     folder = write_cohort(tmp_path, yearly(0, 15, 16, 17))
     before = reviewed(folder)
